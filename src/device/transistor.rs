@@ -1,0 +1,144 @@
+//! The bipolar transistor: transport form of Ebers and Moll (1954), with the base charge of Gummel and Poon (1970).
+
+use serde::{Deserialize, Serialize};
+
+use super::{REFERENCE_TEMPERATURE, thermal_voltage};
+
+/// Parameters at the reference temperature. Infinite `early_*` and `knee_current_*` and zero `*_leakage` switch the
+/// effect off, which leaves the transport form of Ebers and Moll.
+#[derive(Clone, Copy, PartialEq, Debug, Serialize, Deserialize)]
+pub struct Transistor {
+    /// Transport saturation current I_S (A).
+    pub saturation_current: f64,
+    /// Emission coefficient of the transport current, 1 for an ideal junction.
+    pub emission_coefficient: f64,
+    /// Ideal forward and reverse current gain.
+    pub gain_forward: f64,
+    pub gain_reverse: f64,
+    /// Early voltages (V).
+    pub early_voltage_forward: f64,
+    pub early_voltage_reverse: f64,
+    /// High-level injection knee of the forward transport current (A).
+    pub knee_current_forward: f64,
+    /// Base-emitter recombination current: saturation value (A) and emission coefficient.
+    pub emitter_leakage: f64,
+    pub emitter_leakage_emission: f64,
+    /// Terminal resistances (Ω).
+    pub base_resistance: f64,
+    pub collector_resistance: f64,
+    pub emitter_resistance: f64,
+    /// Collector-base cut-off current (A) at the reference temperature, an element of its own.
+    pub cutoff_current: f64,
+    /// Temperature rise (K) that multiplies the cut-off current by e.
+    pub cutoff_e_fold: f64,
+    /// Energy gap (eV) and temperature exponent of the saturation current.
+    pub energy_gap: f64,
+    pub saturation_exponent: f64,
+    /// Temperature exponent of the gains.
+    pub gain_exponent: f64,
+}
+
+/// Currents into collector and base of the intrinsic transistor and their derivatives over its junction voltages.
+#[derive(Clone, Copy, PartialEq, Debug, Default)]
+pub struct Currents {
+    pub i_c: f64,
+    pub i_b: f64,
+    pub di_c_dv_be: f64,
+    pub di_c_dv_bc: f64,
+    pub di_b_dv_be: f64,
+    pub di_b_dv_bc: f64,
+}
+
+/// The equations at one junction temperature, temperature laws already applied.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub struct AtTemperature {
+    pub parameters: Transistor,
+    pub thermal_voltage: f64,
+}
+
+impl Transistor {
+    /// Applies the temperature laws at junction temperature `t_j` (K).
+    pub fn at(&self, t_j: f64) -> AtTemperature {
+        let ratio = t_j / REFERENCE_TEMPERATURE;
+        let gap = self.energy_gap / thermal_voltage(t_j) * (ratio - 1.0);
+        let log_ratio = libm::log(ratio);
+        let growth = self.saturation_exponent * log_ratio + gap;
+        let gain = libm::exp(self.gain_exponent * log_ratio);
+        let leakage = libm::exp(growth / self.emitter_leakage_emission) / gain;
+        AtTemperature {
+            thermal_voltage: thermal_voltage(t_j),
+            parameters: Transistor {
+                saturation_current: self.saturation_current * libm::exp(growth),
+                gain_forward: self.gain_forward * gain,
+                gain_reverse: self.gain_reverse * gain,
+                emitter_leakage: self.emitter_leakage * leakage,
+                cutoff_current: self.cutoff_current
+                    * libm::exp((t_j - REFERENCE_TEMPERATURE) / self.cutoff_e_fold),
+                ..*self
+            },
+        }
+    }
+}
+
+impl AtTemperature {
+    /// Collector and base current of the intrinsic transistor (without terminal resistances) at `v_be`, `v_bc` (V).
+    ///
+    /// The cut-off element carries `I_CBO * tanh`-like saturation: its full value under reverse bias of a few thermal
+    /// voltages, nothing at zero bias, and no forward conduction of its own.
+    pub fn currents(&self, v_be: f64, v_bc: f64) -> Currents {
+        let p = &self.parameters;
+        let n_vt = p.emission_coefficient * self.thermal_voltage;
+        let (forward, d_forward) = junction(p.saturation_current, v_be, n_vt);
+        let (reverse, d_reverse) = junction(p.saturation_current, v_bc, n_vt);
+        let (leak, d_leak) =
+            junction(p.emitter_leakage, v_be, p.emitter_leakage_emission * self.thermal_voltage);
+
+        // Base charge: q_b = q_1 / 2 * (1 + sqrt(1 + 4 q_2)), Early effect in q_1, the knee in q_2.
+        let slope = 1.0 - v_bc / p.early_voltage_forward - v_be / p.early_voltage_reverse;
+        let slope = slope.max(1e-3);
+        let q_1 = 1.0 / slope;
+        let (dq_1_dv_be, dq_1_dv_bc) =
+            (q_1 * q_1 / p.early_voltage_reverse, q_1 * q_1 / p.early_voltage_forward);
+        let q_2 = (forward / p.knee_current_forward).max(-0.24);
+        let root = (1.0 + 4.0 * q_2).sqrt();
+        let q_b = q_1 * (1.0 + root) / 2.0;
+        let dq_b_dq_2 = q_1 / root;
+        let dq_b_dv_be = dq_1_dv_be * (1.0 + root) / 2.0 + dq_b_dq_2 * d_forward / p.knee_current_forward;
+        let dq_b_dv_bc = dq_1_dv_bc * (1.0 + root) / 2.0;
+
+        let transport = (forward - reverse) / q_b;
+        let dt_dv_be = (d_forward - transport * dq_b_dv_be) / q_b;
+        let dt_dv_bc = (-d_reverse - transport * dq_b_dv_bc) / q_b;
+
+        // Cut-off current flows from collector to base under reverse bias.
+        let (cutoff, d_cutoff) = cutoff(p.cutoff_current, v_bc, self.thermal_voltage);
+
+        Currents {
+            i_c: transport - reverse / p.gain_reverse + cutoff,
+            i_b: forward / p.gain_forward + leak + reverse / p.gain_reverse - cutoff,
+            di_c_dv_be: dt_dv_be,
+            di_c_dv_bc: dt_dv_bc - d_reverse / p.gain_reverse + d_cutoff,
+            di_b_dv_be: d_forward / p.gain_forward + d_leak,
+            di_b_dv_bc: d_reverse / p.gain_reverse - d_cutoff,
+        }
+    }
+}
+
+/// Exponential junction current and its derivative.
+fn junction(saturation: f64, v: f64, n_vt: f64) -> (f64, f64) {
+    if saturation == 0.0 {
+        return (0.0, 0.0);
+    }
+    let grown = libm::exp(v / n_vt);
+    (saturation * (grown - 1.0), saturation * grown / n_vt)
+}
+
+/// The cut-off element: `I (1 - e^(v_bc / V_T))` under reverse bias, smoothly nothing under forward bias.
+fn cutoff(current: f64, v_bc: f64, v_t: f64) -> (f64, f64) {
+    if current == 0.0 || v_bc >= 0.0 {
+        return (0.0, 0.0);
+    }
+    let left = libm::exp(v_bc / v_t);
+    // Squared, so that value and slope both vanish at zero bias.
+    (current * (1.0 - left) * (1.0 - left), -2.0 * current * (1.0 - left) * left / v_t)
+}

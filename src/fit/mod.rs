@@ -1,0 +1,160 @@
+//! Part -> Model: parameters, spread axes, residuals.
+
+use serde::{Deserialize, Serialize};
+
+use crate::device::diode::Diode;
+use crate::device::transistor::Transistor;
+use crate::part::RowQuantity;
+use crate::quantity::Source;
+
+/// How many spread coordinates a device has at most.
+pub const AXES: usize = 4;
+/// Coordinates of one device in its spread: 0 is nominal, -1 and 1 are the ends of each axis.
+pub type Coordinates = [f64; AXES];
+
+/// What bounds a spread axis on one side.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+#[serde(tag = "bound", rename_all = "kebab-case")]
+pub enum Bound {
+    /// Minimum or maximum rows of the record, by data sheet, measurement, standard, specification or calculation.
+    Sourced,
+    /// The bound is an assumption or from memory.
+    Weak { source: Source },
+    /// There is no row that bounds this side; `wanted` says which one to get. The coordinate stays at 0 on this side.
+    Absent { wanted: String },
+}
+
+/// One way in which specimens of a part differ, independent of the others.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct SpreadAxis {
+    /// `gain`, `V_BE`, `saturation`, `leakage` of a transistor; `V_F`, `leakage`, `V_Z` of a diode.
+    pub name: String,
+    /// In words, for a corner table: what the low and the high end mean.
+    pub low: Bound,
+    pub high: Bound,
+}
+
+/// One data-sheet row simulated in its own test condition beside the sheet's value.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct Residual {
+    pub quantity: RowQuantity,
+    /// The test condition as printed.
+    pub at: String,
+    pub min: Option<f64>,
+    pub typ: Option<f64>,
+    pub max: Option<f64>,
+    /// What the model gives at the low end, nominal, at the high end of the axis that the row feeds.
+    pub model: [f64; 3],
+}
+
+/// The law of a device with its spread.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+#[serde(tag = "law", rename_all = "kebab-case")]
+pub enum Law {
+    Transistor(TransistorLaw),
+    Diode(DiodeLaw),
+}
+
+/// A transistor with the deformations of its four axes: gain, V_BE, saturation, leakage.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct TransistorLaw {
+    pub nominal: Transistor,
+    /// Factor on the current gain at coordinate -1 and 1 (base-current terms; I_C against V_BE is kept).
+    pub gain: [f64; 2],
+    /// Shift of V_BE (V) at coordinate -1 and 1 (transport and base current together; the gain is kept).
+    pub v_be: [f64; 2],
+    /// Collector resistance (Ω) and reverse gain at coordinate -1 and 1.
+    pub collector_resistance: [f64; 2],
+    pub gain_reverse: [f64; 2],
+    /// Factor on the cut-off current at coordinate -1 and 1; 0 at -1.
+    pub leakage: [f64; 2],
+    /// (I_C, forced gain) up to which a maximum row of V_CE(sat) covers saturation, with that maximum (V): results that
+    /// use V_CE in saturation beyond all of these are not shown.
+    pub saturation_cover: Vec<SaturationRow>,
+}
+
+/// A maximum row of V_CE(sat) or V_BE(sat).
+#[derive(Clone, Copy, PartialEq, Debug, Serialize, Deserialize)]
+pub struct SaturationRow {
+    pub i_c: f64,
+    pub forced_gain: f64,
+    pub v_ce_max: f64,
+}
+
+/// A diode or Zener with the deformations of its axes: forward voltage, leakage, Zener voltage.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct DiodeLaw {
+    pub nominal: Diode,
+    /// Shift of V_F (V) at coordinate -1 and 1.
+    pub v_f: [f64; 2],
+    /// Factor on the leakage at coordinate -1 and 1.
+    pub leakage: [f64; 2],
+    /// Shift of V_Z (V) at coordinate -1 and 1; zero for a diode.
+    pub v_z: [f64; 2],
+}
+
+/// A fitted part.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct Model {
+    pub part: String,
+    pub law: Law,
+    pub axes: Vec<SpreadAxis>,
+    pub residuals: Vec<Residual>,
+    /// What a reader should know: which effects have no row and are left out.
+    pub notes: Vec<String>,
+}
+
+impl TransistorLaw {
+    /// The transistor of a specimen at `at` = (gain, V_BE, saturation, leakage).
+    pub fn specimen(&self, at: &Coordinates) -> Transistor {
+        use crate::device::{REFERENCE_TEMPERATURE, thermal_voltage};
+        let nominal = &self.nominal;
+        let [gain, v_be, saturation, leakage] = *at;
+        let gain = between_log(self.gain, gain);
+        let shift = between(self.v_be, v_be);
+        let v_t = thermal_voltage(REFERENCE_TEMPERATURE);
+        let main = libm::exp(-shift / (nominal.emission_coefficient * v_t));
+        let side = libm::exp(-shift / (nominal.emitter_leakage_emission * v_t));
+        let resistance = from_nominal(nominal.collector_resistance, self.collector_resistance, saturation);
+        Transistor {
+            saturation_current: nominal.saturation_current * main,
+            gain_forward: nominal.gain_forward * gain,
+            emitter_leakage: nominal.emitter_leakage * side / gain,
+            collector_resistance: resistance,
+            gain_reverse: from_nominal(nominal.gain_reverse, self.gain_reverse, saturation),
+            cutoff_current: nominal.cutoff_current * from_nominal(1.0, self.leakage, leakage),
+            ..*nominal
+        }
+    }
+}
+
+impl DiodeLaw {
+    /// The diode of a specimen at `at` = (V_F, leakage, V_Z, unused).
+    pub fn specimen(&self, at: &Coordinates) -> Diode {
+        use crate::device::{REFERENCE_TEMPERATURE, thermal_voltage};
+        let nominal = &self.nominal;
+        let shift = between(self.v_f, at[0]);
+        let n_vt = nominal.emission_coefficient * thermal_voltage(REFERENCE_TEMPERATURE);
+        Diode {
+            saturation_current: nominal.saturation_current * libm::exp(-shift / n_vt),
+            leakage: nominal.leakage * from_nominal(1.0, self.leakage, at[1]),
+            breakdown_voltage: nominal.breakdown_voltage + between(self.v_z, at[2]),
+            ..*nominal
+        }
+    }
+}
+
+/// Straight line from the end at -1 over 0 at 0 to the end at 1.
+fn between(ends: [f64; 2], at: f64) -> f64 {
+    from_nominal(0.0, ends, at)
+}
+
+/// Straight line in the logarithm from the factor at -1 over 1 at 0 to the factor at 1.
+fn between_log(ends: [f64; 2], at: f64) -> f64 {
+    libm::pow(if at < 0.0 { ends[0] } else { ends[1] }, at.abs())
+}
+
+/// Straight line from the end at -1 over `nominal` at 0 to the end at 1.
+fn from_nominal(nominal: f64, ends: [f64; 2], at: f64) -> f64 {
+    nominal + at.abs() * (if at < 0.0 { ends[0] } else { ends[1] } - nominal)
+}

@@ -1,0 +1,174 @@
+//! Part records: what a data sheet gives, row by row, each with its source. Letter symbols follow IEC 60747.
+
+use serde::{Deserialize, Serialize};
+
+use crate::quantity::Source;
+use crate::source::{Digest, Place};
+
+#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum PartKind {
+    Npn,
+    Pnp,
+    Diode,
+    Zener,
+    /// A family of resistors: tolerance, temperature coefficient, rating.
+    Resistor,
+    Capacitor,
+    Filament,
+    Coil,
+}
+
+/// One part record.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct Part {
+    pub name: String,
+    pub kind: PartKind,
+    pub description: String,
+    pub rows: Vec<Row>,
+    pub ratings: Vec<Rating>,
+    /// Record file and its digest.
+    pub digest: Digest,
+    pub place: Place,
+}
+
+/// What a row states; units are SI throughout, temperatures in kelvin.
+#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug, Serialize, Deserialize)]
+pub enum RowQuantity {
+    /// Static forward current transfer ratio h_FE = I_C / I_B in the active region.
+    #[serde(rename = "h_FE")]
+    CurrentGain,
+    #[serde(rename = "V_BE")]
+    BaseEmitterVoltage,
+    #[serde(rename = "V_BE(sat)")]
+    BaseEmitterSaturation,
+    #[serde(rename = "V_CE(sat)")]
+    CollectorEmitterSaturation,
+    #[serde(rename = "I_CBO")]
+    CollectorCutoff,
+    /// Output conductance h_oe (A/V) at I_C, V_CE.
+    #[serde(rename = "h_oe")]
+    OutputConductance,
+    /// Forward voltage of a diode at I_F.
+    #[serde(rename = "V_F")]
+    ForwardVoltage,
+    /// Reverse current of a diode at V_R.
+    #[serde(rename = "I_R")]
+    ReverseCurrent,
+    /// Zener voltage at I_Z.
+    #[serde(rename = "V_Z")]
+    ZenerVoltage,
+    /// Dynamic resistance of a Zener at I_Z.
+    #[serde(rename = "r_Z")]
+    ZenerResistance,
+    /// Temperature coefficient of the Zener voltage (V/K).
+    #[serde(rename = "TC_VZ")]
+    ZenerTemperatureCoefficient,
+    /// Temperature coefficient of the base-emitter voltage (V/K), negative.
+    #[serde(rename = "TC_VBE")]
+    BaseEmitterTemperatureCoefficient,
+    /// Temperature coefficient of resistance (1/K).
+    #[serde(rename = "TCR")]
+    ResistanceCoefficient,
+    /// Relative tolerance of a resistor, capacitor or coil family.
+    #[serde(rename = "tolerance")]
+    Tolerance,
+    #[serde(rename = "R_cold")]
+    ColdResistance,
+    #[serde(rename = "R")]
+    Resistance,
+    #[serde(rename = "L")]
+    Inductance,
+    #[serde(rename = "C_ob")]
+    OutputCapacitance,
+    #[serde(rename = "C_ib")]
+    InputCapacitance,
+    #[serde(rename = "f_T")]
+    TransitionFrequency,
+}
+
+/// The bias and temperature at which a row holds, SI units, magnitudes for NPN and PNP alike.
+#[derive(Clone, Copy, PartialEq, Debug, Default, Serialize, Deserialize)]
+pub struct TestCondition {
+    pub i_c: Option<f64>,
+    pub i_b: Option<f64>,
+    pub v_ce: Option<f64>,
+    pub v_cb: Option<f64>,
+    /// Forward current of a diode, Zener current of a Zener.
+    pub i_f: Option<f64>,
+    pub v_r: Option<f64>,
+    /// Junction temperature in kelvin (298.15 where the record says nothing else).
+    pub t_j: f64,
+}
+
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct Row {
+    pub quantity: RowQuantity,
+    pub at: TestCondition,
+    pub min: Option<f64>,
+    pub typ: Option<f64>,
+    pub max: Option<f64>,
+    pub source: Source,
+    pub place: Place,
+}
+
+/// Absolute maximum ratings and thermal data; SI units.
+#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug, Serialize, Deserialize)]
+pub enum RatingQuantity {
+    #[serde(rename = "V_CEO")]
+    CollectorEmitter,
+    #[serde(rename = "V_CBO")]
+    CollectorBase,
+    #[serde(rename = "V_EBO")]
+    EmitterBase,
+    #[serde(rename = "I_C")]
+    CollectorCurrent,
+    #[serde(rename = "I_CM")]
+    PeakCollectorCurrent,
+    #[serde(rename = "I_B")]
+    BaseCurrent,
+    /// Total dissipation at the case or ambient temperature given with it.
+    #[serde(rename = "P_tot")]
+    Dissipation,
+    #[serde(rename = "T_j")]
+    JunctionTemperature,
+    /// Thermal resistance junction to ambient (K/W).
+    #[serde(rename = "R_th(j-a)")]
+    JunctionToAmbient,
+    #[serde(rename = "R_th(j-c)")]
+    JunctionToCase,
+    /// Reverse voltage of a diode.
+    #[serde(rename = "V_R")]
+    Reverse,
+    #[serde(rename = "I_F")]
+    ForwardCurrent,
+    #[serde(rename = "I_FM")]
+    PeakForwardCurrent,
+    #[serde(rename = "I_Z")]
+    ZenerCurrent,
+    /// Working voltage of a resistor, capacitor, filament or coil.
+    #[serde(rename = "V")]
+    Voltage,
+    #[serde(rename = "I")]
+    Current,
+}
+
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct Rating {
+    pub quantity: RatingQuantity,
+    pub value: f64,
+    /// Ambient temperature up to which the rating holds in full (P_tot), kelvin.
+    pub up_to: Option<f64>,
+    pub source: Source,
+    pub place: Place,
+}
+
+impl Part {
+    pub fn rating(&self, quantity: RatingQuantity) -> Option<&Rating> {
+        self.ratings.iter().find(|rating| rating.quantity == quantity)
+    }
+
+    pub fn rows_of(&self, quantity: RowQuantity) -> impl Iterator<Item = &Row> {
+        self.rows.iter().filter(move |row| row.quantity == quantity)
+    }
+}
