@@ -1,1 +1,2 @@
 //! Every test of the project, in one binary.
+mod yaml;
