@@ -307,9 +307,8 @@ impl Plan {
             }
         }
         let signed = if k == 1 { direction.first().copied().unwrap_or(gain) } else { gain };
-        for h in 0..k {
-            let device = scratch.heat.hot[h].1;
-            scratch.heat.temperatures[device] = centre[h];
+        for (&(_, device, _), t) in scratch.heat.hot.iter().zip(&centre) {
+            scratch.heat.temperatures[device] = *t;
         }
         if signed >= 1.0 {
             return Err(Failure::ThermalRunaway { element });
