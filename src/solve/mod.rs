@@ -174,6 +174,9 @@ pub enum Failure {
     Singular,
     /// The thermal equilibrium was not found below the temperature bound.
     ThermalRunaway { element: usize },
+    /// The equations have a solution, with a current that no discrete part could carry (an ideal junction straight
+    /// across a supply).
+    BeyondModel { element: usize },
     /// An element's branch is of another class than the plan's, lacks a terminal, or has a value without sense
     /// (not finite, negative resistance, temperature not above zero).
     Unfit { element: usize },

@@ -17,6 +17,9 @@ const STEPS: usize = 80;
 const STAGE_STEPS: usize = 30;
 /// Stages that a stepping attempt may take.
 const STAGES: usize = 120;
+/// Share of a junction voltage below which a step only goes to its lower digits (see `Scratch::low`), where currents are
+/// straight lines: otherwise the rounding of the exponential's argument would be thrown anew with every step.
+const FINE: f64 = 100.0 * f64::EPSILON;
 /// Junction current (A) at which a junction counts as entered by [`Limit`].
 const ENTRY_CURRENT: f64 = 1e-6;
 
@@ -46,7 +49,7 @@ pub(super) enum Law {
 /// i / n, a step d asks for the current i (1 + d / n), and the voltage that carries this current is v + n ln(1 + d / n).
 /// That is where the step goes. A junction that does not conduct yet has no useful tangent: it goes to its `entry`, the
 /// voltage of a small current, and from there on as before. (Nagel 1975 gives the history of such limits.)
-#[derive(Clone, Copy, PartialEq, Debug, Default)]
+#[derive(Clone, Copy, PartialEq, Debug)]
 pub(super) struct Limit {
     /// Voltage (V) of e-fold current, forward; entry voltage forward.
     pub fold: f64,
@@ -57,13 +60,16 @@ pub(super) struct Limit {
 }
 
 impl Limit {
+    const NONE: Limit =
+        Limit { fold: 1.0, entry: f64::INFINITY, breakdown_fold: 1.0, breakdown_entry: f64::INFINITY };
+
     fn junction(saturation_current: f64, fold: f64) -> Limit {
         let entry = if saturation_current > 0.0 {
             (fold * libm::log(ENTRY_CURRENT / saturation_current)).max(0.0)
         } else {
             f64::INFINITY
         };
-        Limit { fold, entry, breakdown_fold: 1.0, breakdown_entry: f64::INFINITY }
+        Limit { fold, entry, ..Limit::NONE }
     }
 
     /// The voltage to go to, where Newton's method would go from `from` to `to`.
@@ -100,7 +106,7 @@ impl Device {
             law: Law::Open,
             resistances: [0.0; 3],
             probe: Probe::default(),
-            limits: [Limit::default(); 2],
+            limits: [Limit::NONE; 2],
         };
         match branch {
             Branch::Transistor { pnp, parameters, probe, .. } => {
@@ -184,8 +190,8 @@ impl Plan {
     pub(super) fn rest(&self, scratch: &mut Scratch) {
         scratch.y.clear();
         scratch.y.resize(self.unknowns(), 0.0);
-        scratch.u.clear();
-        scratch.u.resize(self.ports, 0.0);
+        fill(&mut scratch.u, self.ports);
+        fill(&mut scratch.low, self.ports);
     }
 
     /// Takes over a start; false if it does not belong to this plan.
@@ -199,6 +205,7 @@ impl Plan {
             scratch.y.extend_from_slice(&start.linear);
             scratch.u.clear();
             scratch.u.extend_from_slice(&start.junctions);
+            fill(&mut scratch.low, self.ports);
         }
         fits
     }
@@ -289,11 +296,18 @@ impl Plan {
                 };
                 for j in 0..count {
                     let from = scratch.u[port + j];
-                    let to = from + scratch.step[n + port + j];
+                    let step = scratch.low[port + j] + scratch.step[n + port + j];
+                    if step.abs() <= FINE * from.abs() {
+                        scratch.low[port + j] = step;
+                        moved = moved.max(scratch.step[n + port + j].abs());
+                        continue;
+                    }
+                    let to = from + step;
                     let allowed = scratch.prepared[device].limits[j].apply(from, to);
                     limited |= allowed != to;
                     moved = moved.max((allowed - from).abs());
                     scratch.u[port + j] = allowed;
+                    scratch.low[port + j] = if allowed == to { (from - to) + step } else { 0.0 };
                 }
             }
             debug_assert!(scratch.u.len() == m);
@@ -398,8 +412,9 @@ impl Plan {
         fill(&mut scratch.node_largest, self.nodes);
         scratch.i.resize(m, 0.0);
         scratch.slopes.resize(2 * m, 0.0);
-        let Scratch { residual, largest, node_sum, node_largest, y, u, i, slopes, prepared, laws, .. } =
-            scratch;
+        let Scratch {
+            residual, largest, node_sum, node_largest, y, u, low, i, slopes, prepared, laws, ..
+        } = scratch;
         let voltage = |node: Node| self.column(node).map_or(0.0, |column| y[column]);
         let mut out_of = |node: Node, current: f64| {
             node_sum[node] += current;
@@ -431,11 +446,14 @@ impl Plan {
                         Law::Diode(at) => at.current(u[port]),
                         _ => (0.0, 0.0),
                     };
-                    i[port] = flow + conductance * u[port];
                     slopes[2 * port] = slope + conductance;
+                    i[port] = flow + conductance * u[port] + slopes[2 * port] * low[port];
                     out_of(anode, i[port]);
                     out_of(cathode, -i[port]);
-                    equation(n + port, &[voltage(anode), -voltage(cathode), -u[port], -r_s * i[port]]);
+                    equation(
+                        n + port,
+                        &[voltage(anode), -voltage(cathode), -u[port], -low[port], -r_s * i[port]],
+                    );
                 }
                 Slot::Transistor { collector, base, emitter, port, device } => {
                     let Device { sign, law, resistances: [r_c, r_b, r_e], probe, .. } = &prepared[device];
@@ -445,21 +463,25 @@ impl Plan {
                         _ => transistor::Currents::default(),
                     };
                     let cutoff = sources * probe.cutoff;
-                    let i_c = now.i_c + cutoff - conductance * u_bc;
-                    let i_b = now.i_b - cutoff + conductance * (u_be + u_bc);
-                    (i[port], i[port + 1]) = (i_c, i_b);
                     slopes[2 * port] = now.di_c_dv_be;
                     slopes[2 * port + 1] = now.di_c_dv_bc - conductance;
                     slopes[2 * port + 2] = now.di_b_dv_bc + conductance;
                     slopes[2 * port + 3] = now.di_b_dv_be + conductance;
+                    let (d_be, d_bc) = (low[port], low[port + 1]);
+                    let i_c = now.i_c + cutoff - conductance * u_bc
+                        + (slopes[2 * port] * d_be + slopes[2 * port + 1] * d_bc);
+                    let i_b = now.i_b - cutoff
+                        + conductance * (u_be + u_bc)
+                        + (slopes[2 * port + 3] * d_be + slopes[2 * port + 2] * d_bc);
+                    (i[port], i[port + 1]) = (i_c, i_b);
                     out_of(collector, sign * i_c);
                     out_of(base, sign * i_b);
                     out_of(emitter, -sign * (i_c + i_b));
                     let v_b = sign * voltage(base) - sources * probe.v_be;
                     let v_e = sign * voltage(emitter);
                     let v_c = sign * voltage(collector) - sources * probe.v_ce;
-                    equation(n + port, &[v_b, -v_e, -u_be, -r_b * i_b, -r_e * (i_b + i_c)]);
-                    equation(n + port + 1, &[v_b, -v_c, -u_bc, -r_b * i_b, r_c * i_c]);
+                    equation(n + port, &[v_b, -v_e, -u_be, -d_be, -r_b * i_b, -r_e * (i_b + i_c)]);
+                    equation(n + port + 1, &[v_b, -v_c, -u_bc, -d_bc, -r_b * i_b, r_c * i_c]);
                 }
             }
         }
@@ -481,6 +503,7 @@ fn keep(scratch: &mut Scratch) {
 fn recall(scratch: &mut Scratch) {
     scratch.y.clone_from(&scratch.kept_y);
     scratch.u.clone_from(&scratch.kept_u);
+    scratch.low.iter_mut().for_each(|low| *low = 0.0);
 }
 
 /// Notes an attempt, once in a row.

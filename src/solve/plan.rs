@@ -63,6 +63,9 @@ pub struct Scratch {
     /// State: y, u, and junction currents with their slopes (two a junction) at u.
     pub(super) y: Vec<f64>,
     pub(super) u: Vec<f64>,
+    /// What u lacks in digits: the junction voltages are u + low. A saturated transistor whose collector carries nothing
+    /// needs its junction voltages finer than a double holds them, for its collector current to vanish.
+    pub(super) low: Vec<f64>,
     pub(super) i: Vec<f64>,
     pub(super) slopes: Vec<f64>,
     pub(super) residual: Vec<f64>,

@@ -12,6 +12,8 @@ use super::{Attempt, Branch, ElementPoint, Failure, OperatingPoint, Solution, Th
 
 /// Junction temperature above ambient (K) beyond which there is no equilibrium to look for.
 pub const RUNAWAY_RISE: f64 = 500.0;
+/// Current (A) beyond which a solution says nothing about a circuit of discrete parts.
+const LARGEST_CURRENT: f64 = 1e6;
 /// Excess (K) below which an equilibrium counts as found.
 const EXCESS: f64 = 1e-8;
 /// Steps of Broyden's method, of warming, of the power method.
@@ -44,7 +46,7 @@ impl Plan {
     /// As [`Plan::solve`], into a point that is used again: nothing is allocated after the first call.
     ///
     /// # Errors
-    /// See [`Failure`]. `point` then holds nothing but the attempts.
+    /// See [`Failure`]. Nothing in `point` but the attempts means anything then.
     pub fn solve_into(
         &self,
         branches: &[Branch],
@@ -78,7 +80,11 @@ impl Plan {
             self.equilibrium(branches, ambient, first, scratch, &mut point.attempts)?
         };
         self.write(branches, ambient, scratch, point);
-        Ok(())
+        let beyond = |at: &ElementPoint| at.i.abs() > LARGEST_CURRENT || at.i_b.abs() > LARGEST_CURRENT;
+        match point.elements.iter().position(beyond) {
+            Some(element) => Err(Failure::BeyondModel { element }),
+            None => Ok(()),
+        }
     }
 
     /// Checks temperatures and thermal resistances; every device at ambient, and the list of those that heat themselves.
