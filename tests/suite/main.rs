@@ -1,4 +1,6 @@
 //! Every test of the project, in one binary.
-mod yaml;
+
 mod formula;
 mod quantity;
+mod solve;
+mod yaml;
