@@ -33,7 +33,8 @@ pub(super) fn read(
         }
         if labels.len() >= MOST {
             diagnostics.push(
-                Diagnostic::error(&block.place, "there are too many criteria").expected(format!("at most {MOST}")),
+                Diagnostic::error(&block.place, "there are too many criteria")
+                    .expected(format!("at most {MOST}")),
             );
             return;
         }
@@ -41,7 +42,8 @@ pub(super) fn read(
         let label = line.spot(label);
         if labels.contains(&label.value) {
             let message = format!("there are two criteria `{}`", label.value);
-            diagnostics.push(Diagnostic::error(&label.place, message).expected("a label of its own for each"));
+            diagnostics
+                .push(Diagnostic::error(&label.place, message).expected("a label of its own for each"));
         }
         if label.value.contains('"') {
             let message = "a label with quotes cannot be recalled";
@@ -120,7 +122,10 @@ fn split_clause(
     Some((line.trimmed(rest.start..rest.start + open), Some(line.spot(clause))))
 }
 
-fn read_tail(words: &[Spot<String>], diagnostics: &mut Diagnostics) -> Option<(Over, Vec<Spot<String>>, bool)> {
+fn read_tail(
+    words: &[Spot<String>],
+    diagnostics: &mut Diagnostics,
+) -> Option<(Over, Vec<Spot<String>>, bool)> {
     let (mut over, mut conditions, mut safety) = (None, Vec::new(), false);
     let mut right = true;
     let mut at = 0;
@@ -149,14 +154,16 @@ fn read_tail(words: &[Spot<String>], diagnostics: &mut Diagnostics) -> Option<(O
             }
             "in" => {
                 let before = conditions.len();
-                while let Some(condition) = words.get(at).filter(|word| !TAIL.contains(&word.value.as_str())) {
+                while let Some(condition) = words.get(at).filter(|word| !TAIL.contains(&word.value.as_str()))
+                {
                     conditions.push(condition.clone());
                     at += 1;
                 }
                 if conditions.len() == before {
                     right = false;
                     diagnostics.push(
-                        Diagnostic::error(&word.place, "no condition follows `in`").expected("`in on, inrush`"),
+                        Diagnostic::error(&word.place, "no condition follows `in`")
+                            .expected("`in on, inrush`"),
                     );
                 }
             }

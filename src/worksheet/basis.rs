@@ -60,7 +60,12 @@ pub(super) fn tree(page: &Page, block: &RawBlock, diagnostics: &mut Diagnostics)
 
 /// The text of a scalar as it is laid out in the page, so that places inside it are true: without quotes, at the place
 /// of its first character. A scalar over several lines is taken as joined by the YAML reader.
-pub(super) fn scalar(page: &Page, node: &Node, what: &str, diagnostics: &mut Diagnostics) -> Option<Spot<String>> {
+pub(super) fn scalar(
+    page: &Page,
+    node: &Node,
+    what: &str,
+    diagnostics: &mut Diagnostics,
+) -> Option<Spot<String>> {
     let text = diagnostics.keep(node.scalar(what))?;
     let mut place = node.place.clone();
     let written = page.slice(page.offset(&place)..page.line_range(place.line as usize).end);
@@ -162,7 +167,8 @@ pub(super) fn split(text: &Spot<String>, diagnostics: &mut Diagnostics) -> Optio
         end = open;
     }
     let mut about = None;
-    if let Some((at, dash)) = [" -- ", " — "].iter().find_map(|dash| Some((whole[..end].find(dash)?, dash))) {
+    if let Some((at, dash)) = [" -- ", " — "].iter().find_map(|dash| Some((whole[..end].find(dash)?, dash)))
+    {
         about = Some(trimmed(at + dash.len()..end)).filter(|range| !range.is_empty());
         end = at;
     }
@@ -187,7 +193,8 @@ pub(super) fn source_of(text: &Spot<String>, clauses: &[&str], diagnostics: &mut
 /// What sort of source some words name; weak ones are looked for first, so that nothing weak passes as firm.
 pub fn origin(text: &str, clauses: &[&str]) -> Option<Origin> {
     let lower = text.to_lowercase();
-    let words: Vec<&str> = lower.split(|c: char| !c.is_alphanumeric()).filter(|word| !word.is_empty()).collect();
+    let words: Vec<&str> =
+        lower.split(|c: char| !c.is_alphanumeric()).filter(|word| !word.is_empty()).collect();
     let says = |stems: &[&str]| words.iter().any(|word| stems.iter().any(|stem| word.starts_with(stem)));
     let is = |exact: &[&str]| words.iter().any(|word| exact.contains(word));
     if says(&["assum", "guess", "estimate"]) {

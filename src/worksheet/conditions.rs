@@ -31,7 +31,9 @@ pub(super) fn read(
     diagnostics: &mut Diagnostics,
 ) {
     let Some(node) = basis::tree(page, block, diagnostics) else { return };
-    let Some(entries) = diagnostics.keep(node.map(&format!("one condition a line: {EXAMPLE}"))) else { return };
+    let Some(entries) = diagnostics.keep(node.map(&format!("one condition a line: {EXAMPLE}"))) else {
+        return;
+    };
     for (key, value) in entries {
         if enough(diagnostics) {
             return;
@@ -113,7 +115,8 @@ pub(super) fn yes_or_no(text: &Spot<String>, diagnostics: &mut Diagnostics) -> O
         "no" => Some(false),
         other => {
             diagnostics.push(
-                Diagnostic::error(&text.place, format!("`{other}` is neither yes nor no")).expected("yes or no"),
+                Diagnostic::error(&text.place, format!("`{other}` is neither yes nor no"))
+                    .expected("yes or no"),
             );
             None
         }
@@ -154,7 +157,8 @@ fn element_state(
     if state == ElementState::Cold && !has("cold") && !has("part") {
         let message = format!("the cold resistance of `{}` is not given", record.key.value);
         diagnostics.push(
-            Diagnostic::error(&text.place, message).expected("`cold: 14 Ω` in its record, or a part that has it"),
+            Diagnostic::error(&text.place, message)
+                .expected("`cold: 14 Ω` in its record, or a part that has it"),
         );
         return None;
     }

@@ -74,8 +74,11 @@ fn read_line(line: &Line, block: usize, diagnostics: &mut Diagnostics) -> Option
         _ => {
             if signs.is_empty() {
                 diagnostics.push(
-                    Diagnostic::error(&line.place(rest.clone()), "this line neither defines nor asserts anything")
-                        .expected(format!("`{EXAMPLE}`, or `enough: I_B > 3 * I_C / beta`")),
+                    Diagnostic::error(
+                        &line.place(rest.clone()),
+                        "this line neither defines nor asserts anything",
+                    )
+                    .expected(format!("`{EXAMPLE}`, or `enough: I_B > 3 * I_C / beta`")),
                 );
                 return None;
             }

@@ -43,7 +43,8 @@ pub(super) fn read(
     if !closed {
         let message = "this block is not closed, and swallows the rest of the worksheet";
         diagnostics.push(
-            Diagnostic::error(&place, message).expected(format!("a line `{}` below its last line", &fence[..length])),
+            Diagnostic::error(&place, message)
+                .expected(format!("a line `{}` below its last line", &fence[..length])),
         );
     }
     let word = info.split_whitespace().next().unwrap_or("");
@@ -65,8 +66,11 @@ pub(super) fn read(
     }
     if !outermost || range.start != opening.start {
         diagnostics.push(
-            Diagnostic::error(&place, format!("the `{ours}` block stands inside something else or is indented"))
-                .expected("the fence at the start of its line, in no list, quote or footnote"),
+            Diagnostic::error(
+                &place,
+                format!("the `{ours}` block stands inside something else or is indented"),
+            )
+            .expected("the fence at the start of its line, in no list, quote or footnote"),
         );
         return None;
     }

@@ -26,9 +26,8 @@ pub(super) fn read(
     let entries = diagnostics.keep(node.map(EXAMPLE))?;
     yaml::refuse_unknown_keys(entries, &KEYS, diagnostics);
     let Some(plot) = node.get("plot") else {
-        diagnostics.push(
-            Diagnostic::error(&block.place, "the figure does not say what it plots").expected(EXAMPLE),
-        );
+        diagnostics
+            .push(Diagnostic::error(&block.place, "the figure does not say what it plots").expected(EXAMPLE));
         return None;
     };
     let text = |key: &str, what: &str, diagnostics: &mut Diagnostics| {
@@ -124,8 +123,7 @@ fn sweep(
     }
     if plots.is_empty() || plots.len() > MOST {
         let message = format!("the figure plots {} results", plots.len());
-        diagnostics
-            .push(Diagnostic::error(&block.place, message).expected(format!("1 to {MOST} results")));
+        diagnostics.push(Diagnostic::error(&block.place, message).expected(format!("1 to {MOST} results")));
         return None;
     }
     let mut formulas: Vec<Formula> = Vec::new();

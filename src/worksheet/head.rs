@@ -148,7 +148,10 @@ fn calendar_date(text: &str, place: &Place, diagnostics: &mut Diagnostics) -> bo
 fn date_parts(text: &str) -> Option<(u32, u32, u32)> {
     let bytes = text.as_bytes();
     let shape = bytes.len() == 10
-        && bytes.iter().enumerate().all(|(i, b)| if i == 4 || i == 7 { *b == b'-' } else { b.is_ascii_digit() });
+        && bytes
+            .iter()
+            .enumerate()
+            .all(|(i, b)| if i == 4 || i == 7 { *b == b'-' } else { b.is_ascii_digit() });
     if !shape {
         return None;
     }

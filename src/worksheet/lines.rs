@@ -74,11 +74,16 @@ impl Line<'_> {
     }
 
     /// Splits off the label: its range, and the range of what follows the colon.
-    pub fn label(&self, example: &str, diagnostics: &mut Diagnostics) -> Option<(Range<usize>, Range<usize>)> {
+    pub fn label(
+        &self,
+        example: &str,
+        diagnostics: &mut Diagnostics,
+    ) -> Option<(Range<usize>, Range<usize>)> {
         let whole = 0..self.text.len();
         let Some(colon) = self.text.find(':') else {
             diagnostics.push(
-                Diagnostic::error(&self.place(whole), "the line has no label").expected(format!("`{example}`")),
+                Diagnostic::error(&self.place(whole), "the line has no label")
+                    .expected(format!("`{example}`")),
             );
             return None;
         };
@@ -96,7 +101,8 @@ impl Line<'_> {
     pub fn formula(&self, range: Range<usize>) -> Result<Formula, Diagnostics> {
         let place = self.flat(range.clone());
         let text = self.text.get(range.clone()).unwrap_or("");
-        let mut formula = formula::parse(text, &place).map_err(|found| self.true_places(found, range.start))?;
+        let mut formula =
+            formula::parse(text, &place).map_err(|found| self.true_places(found, range.start))?;
         self.true_expr(&mut formula.expr, range.start);
         formula.place = self.place(range);
         Ok(formula)
@@ -124,14 +130,8 @@ impl Line<'_> {
         let mut bytes = text.char_indices().map(|(at, _)| at).chain(std::iter::once(text.len()));
         let skip = (flat.column as usize).saturating_sub(1);
         let begin = start + bytes.nth(skip).unwrap_or(text.len());
-        let covered: usize = self
-            .text
-            .get(begin..)
-            .unwrap_or("")
-            .chars()
-            .take(flat.length as usize)
-            .map(char::len_utf8)
-            .sum();
+        let covered: usize =
+            self.text.get(begin..).unwrap_or("").chars().take(flat.length as usize).map(char::len_utf8).sum();
         *flat = self.place(begin..begin + covered);
     }
 
@@ -219,9 +219,9 @@ pub(super) fn is_name(word: &str) -> bool {
 
 /// Words that have a meaning of their own and cannot name a value.
 const RESERVED: [&str; 30] = [
-    "ground", "in", "over", "safety", "nominal", "extremes", "if", "else", "and", "or", "not", "to", "usually",
-    "true", "false", "none", "met", "worst", "at", "unit", "digits", "ln", "log10", "exp", "sqrt", "abs", "min",
-    "max", "normal", "lasts",
+    "ground", "in", "over", "safety", "nominal", "extremes", "if", "else", "and", "or", "not", "to",
+    "usually", "true", "false", "none", "met", "worst", "at", "unit", "digits", "ln", "log10", "exp", "sqrt",
+    "abs", "min", "max", "normal", "lasts",
 ];
 
 /// Reports a name that cannot be used for a value.

@@ -426,7 +426,8 @@ impl<'a> Reader<'a> {
                 Some(c) if c.is_alphanumeric() => self.alphanumeric(),
                 _ => return Err(fault(start..start + 1, "the subscript is missing", "`V_CE` or `V_{CE}`")),
             };
-            if let Some(word) = self.rest().strip_prefix('(').and_then(|rest| rest.split_once(')')).map(|p| p.0)
+            if let Some(word) =
+                self.rest().strip_prefix('(').and_then(|rest| rest.split_once(')')).map(|p| p.0)
                 && !word.is_empty()
                 && word.chars().all(|c| c.is_alphanumeric() || c == '-')
             {

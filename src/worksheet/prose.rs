@@ -172,8 +172,9 @@ impl Walk<'_, '_> {
                 Event::Start(Tag::FootnoteDefinition(label)) => {
                     if !self.referred.contains(label.as_ref()) {
                         let message = format!("the footnote `{label}` is never referred to");
-                        self.diagnostics
-                            .push(Diagnostic::error(&self.page.place(range.clone()), message).expected(FOOTNOTE));
+                        self.diagnostics.push(
+                            Diagnostic::error(&self.page.place(range.clone()), message).expected(FOOTNOTE),
+                        );
                         self.pass_over(range.clone());
                     }
                     left_out = 1;
@@ -233,9 +234,7 @@ impl Walk<'_, '_> {
             Tag::Emphasis => bits(Inner::Emphasis),
             Tag::Strong => bits(Inner::Strong),
             Tag::Strikethrough => bits(Inner::Struck),
-            Tag::Link { dest_url, title, .. } => {
-                bits(Inner::Link(self.target(dest_url, title, range)))
-            }
+            Tag::Link { dest_url, title, .. } => bits(Inner::Link(self.target(dest_url, title, range))),
             Tag::Image { dest_url, title, .. } => Frame::Image {
                 path: self.image_path(dest_url, title, range.clone()),
                 caption: title.to_string(),
@@ -309,7 +308,9 @@ impl Walk<'_, '_> {
                 return;
             }
             Inner::Link(Some(target)) => Span::Link { target, content },
-            Inner::Link(None) => return content.into_iter().for_each(|span| push_bit(stack, Bit::Span(span))),
+            Inner::Link(None) => {
+                return content.into_iter().for_each(|span| push_bit(stack, Bit::Span(span)));
+            }
             Inner::Strong => Span::Strong(content),
             Inner::Struck => Span::Struck(content),
             Inner::Emphasis | Inner::Paragraph => Span::Emphasis(content),
@@ -318,7 +319,9 @@ impl Walk<'_, '_> {
     }
 
     fn bit(&mut self, stack: &mut [Frame], span: Span) {
-        if let Some(Frame::Image { alt, .. }) = stack.iter_mut().rev().find(|f| matches!(f, Frame::Image { .. })) {
+        if let Some(Frame::Image { alt, .. }) =
+            stack.iter_mut().rev().find(|f| matches!(f, Frame::Image { .. }))
+        {
             match span {
                 Span::Text(text) | Span::Code(text) => alt.push_str(&text),
                 Span::Formula { spoken, .. } => alt.push_str(&spoken),
@@ -438,7 +441,13 @@ impl Walk<'_, '_> {
         out
     }
 
-    fn code_block(&mut self, kind: &CodeBlockKind, text: String, range: Range<usize>, outermost: bool) -> Piece {
+    fn code_block(
+        &mut self,
+        kind: &CodeBlockKind,
+        text: String,
+        range: Range<usize>,
+        outermost: bool,
+    ) -> Piece {
         let CodeBlockKind::Fenced(info) = kind else { return Piece::Listing { text } };
         self.pass_over(range.clone());
         match fence::read(self.page, info, range, outermost, self.diagnostics) {
@@ -493,7 +502,9 @@ impl Walk<'_, '_> {
         }
         if !self.cited.insert(label.to_owned()) {
             self.error(range, &format!("the footnote `{label}` is referred to twice"))
-                .expected("one reference to each footnote: it is set at the foot of the page of its reference")
+                .expected(
+                    "one reference to each footnote: it is set at the foot of the page of its reference",
+                )
                 .push(self.diagnostics);
             return None;
         }
@@ -571,8 +582,11 @@ impl Walk<'_, '_> {
             _ => {
                 if let Piece::Image { place, .. } = image {
                     self.diagnostics.push(
-                        Diagnostic::error(&place, "an image cannot stand in a heading, table, link or emphasis")
-                            .expected("the image in a paragraph of its own"),
+                        Diagnostic::error(
+                            &place,
+                            "an image cannot stand in a heading, table, link or emphasis",
+                        )
+                        .expected("the image in a paragraph of its own"),
                     );
                 }
             }

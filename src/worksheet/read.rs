@@ -9,8 +9,8 @@ use super::fence::RawBlock;
 use super::page::Page;
 use super::prose::{self, Body};
 use super::{
-    BasisEntry, Condition, CriterionLine, DerivationLine, FigureRequest, Head, Record, Spot, Worksheet, acceptance,
-    basis, conditions, derivation, enough, figure, head, records,
+    BasisEntry, Condition, CriterionLine, DerivationLine, FigureRequest, Head, Record, Spot, Worksheet,
+    acceptance, basis, conditions, derivation, enough, figure, head, records,
 };
 
 /// Reads a worksheet; warnings come with it.

@@ -124,7 +124,8 @@ enum What {
     Refused(String, &'static str),
 }
 
-const ARITHMETIC: &str = "names, functions and filters only; arithmetic stands on a derivation line, and is recalled by name";
+const ARITHMETIC: &str =
+    "names, functions and filters only; arithmetic stands on a derivation line, and is recalled by name";
 const COMPARING: &str = "`met(\"label\")`; a comparison stands on an acceptance line";
 const JOINING: &str = "the words around the recall, or one text in quotes";
 
@@ -238,8 +239,11 @@ pub(super) fn scan(whole: &str, place: &Place) -> Result<Scanned, Diagnostics> {
                         conditions.push(Spot { value: name.clone(), place: spot(&inside_quotes(range)) })
                     }
                     ("met" | "worst", _) => diagnostics.push(
-                        Diagnostic::error(&spot(&token.range), format!("`{name}` needs the label of a criterion"))
-                            .expected(format!("`{name}(\"label\")`")),
+                        Diagnostic::error(
+                            &spot(&token.range),
+                            format!("`{name}` needs the label of a criterion"),
+                        )
+                        .expected(format!("`{name}(\"label\")`")),
                     ),
                     ("at", _) => diagnostics.push(
                         Diagnostic::error(&spot(&token.range), "`at` needs a condition and a name")
