@@ -39,7 +39,7 @@ pub(super) fn cut<'p>(page: &'p Page<'p>, block: &RawBlock, diagnostics: &mut Di
             }
             _ => {
                 if indent > 0 {
-                    let place = page.place(start..start + indent + text.len());
+                    let place = page.place(start + indent..start + indent + text.len());
                     diagnostics.push(
                         Diagnostic::error(&place, "this continues a line, but there is none before it")
                             .expected("the line at the very left: `label: ...`"),

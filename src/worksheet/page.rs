@@ -9,6 +9,9 @@ use crate::source::{File, LARGEST_TEXT, Place};
 /// Stands for the first bytes of a recall while the prose is parsed; refused in input.
 pub(super) const MARK: char = '\u{e000}';
 
+/// The longest line, in bytes: places are counted along it.
+const LONGEST_LINE: usize = 32 << 10;
+
 /// The text of a worksheet; every place is looked up here, in logarithmic time.
 pub(super) struct Page<'a> {
     pub file: &'a Arc<str>,
@@ -34,7 +37,14 @@ impl<'a> Page<'a> {
         let starts =
             std::iter::once(0).chain(text.match_indices('\n').map(|(at, _)| at + 1)).collect::<Vec<_>>();
         let page = Page { file: &source.path, text, starts };
-        let refused = page.refused_characters();
+        let mut refused = page.refused_characters();
+        if let Some(line) = (1..=page.starts.len()).find(|line| page.line_range(*line).len() > LONGEST_LINE) {
+            let place = Place::new(page.file, line as u32, 1, 0);
+            let message = format!("the line has {} bytes", page.line_range(line).len());
+            refused.push(
+                Diagnostic::error(&place, message).expected(format!("at most {LONGEST_LINE} in a line")),
+            );
+        }
         if refused.has_errors() { Err(refused) } else { Ok(page) }
     }
 

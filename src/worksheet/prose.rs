@@ -341,7 +341,7 @@ impl Walk<'_, '_> {
         }
         let mut rest = text;
         for offset in marks {
-            let Some(at) = rest.find(MARK) else { break };
+            let Some(at) = rest.find(MARK).filter(|_| !enough(self.diagnostics)) else { break };
             let length = self.recalls.get(&offset).map_or(MARK.len_utf8(), |range| range.len());
             self.bit(stack, Span::Text(rest[..at].to_owned()));
             if let Some(number) = self.recall(offset) {
@@ -362,6 +362,10 @@ impl Walk<'_, '_> {
         ] {
             if let Some(at) = text.find(brace) {
                 let start = range.start + at;
+                // An escape takes the backslash out of the text.
+                if self.page.slice(start.saturating_sub(1)..start) == "\\" {
+                    continue;
+                }
                 self.error(start..start + 2, message)
                     .expected("`{{ name }}` on one line, or `\\{` for the braces themselves")
                     .push(self.diagnostics);

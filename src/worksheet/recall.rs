@@ -71,19 +71,19 @@ pub(super) fn mask(text: &str, from: usize) -> (String, BTreeMap<usize, Range<us
     while let Some(next) = text.get(at..).and_then(|rest| rest.find("{{")) {
         let start = at + next;
         let line_end = text[start..].find('\n').map_or(text.len(), |end| start + end);
-        let end = closing(&text[start..line_end]).map(|length| start + length);
         masked.push_str(&text[at..start]);
-        match end {
-            Some(end) => {
-                masked.push(MARK);
-                masked.extend(std::iter::repeat_n('x', end - start - MARK.len_utf8()));
-                found.insert(start, start..end);
-                at = end;
-            }
-            None => {
-                masked.push_str("{{");
-                at = start + 2;
-            }
+        if text[..start].ends_with('\\') {
+            masked.push_str("{{");
+            at = start + 2;
+        } else if let Some(length) = closing(&text[start..line_end]) {
+            masked.push(MARK);
+            masked.extend(std::iter::repeat_n('x', length - MARK.len_utf8()));
+            found.insert(start, start..start + length);
+            at = start + length;
+        } else {
+            // Nothing closes a recall on the rest of this line.
+            masked.push_str(&text[start..line_end]);
+            at = line_end;
         }
     }
     masked.push_str(text.get(at..).unwrap_or(""));
@@ -213,6 +213,7 @@ pub(super) fn scan(whole: &str, place: &Place) -> Result<Scanned, Diagnostics> {
     let tokens = tokens(source);
     let mut diagnostics = Diagnostics::default();
     let (mut names, mut criteria, mut conditions) = (Vec::new(), Vec::new(), Vec::new());
+    let refused = tokens.iter().any(|token| matches!(token.what, What::Refused(..)));
     for (index, token) in tokens.iter().enumerate() {
         let sign = |at: Option<usize>| match at.and_then(|at| tokens.get(at)).map(|token| &token.what) {
             Some(What::Sign(sign)) => Some(*sign),
@@ -252,7 +253,14 @@ pub(super) fn scan(whole: &str, place: &Place) -> Result<Scanned, Diagnostics> {
                     _ => {}
                 }
             }
-            What::Name(name) => names.push(Spot { value: name.clone(), place: spot(&token.range) }),
+            What::Name(name) => {
+                let name = Spot { value: name.clone(), place: spot(&token.range) };
+                if !refused && is_condition(&tokens, index) {
+                    let message = format!("`{}` is neither true nor false", name.value);
+                    diagnostics.push(Diagnostic::error(&name.place, message).expected(COMPARING));
+                }
+                names.push(name);
+            }
             What::Text(_) | What::Number(_) | What::Sign(_) => {}
         }
     }
@@ -263,6 +271,14 @@ pub(super) fn scan(whole: &str, place: &Place) -> Result<Scanned, Diagnostics> {
         diagnostics.push(syntax(&recall.place, &error));
     }
     if diagnostics.has_errors() { Err(diagnostics) } else { Ok(Scanned { recall, conditions }) }
+}
+
+/// Whether a name stands where something true or false belongs.
+fn is_condition(tokens: &[Token], index: usize) -> bool {
+    let keyword = |token: Option<&Token>, words: &[&str]| matches!(token.map(|token| &token.what), Some(What::Name(name)) if words.contains(&name.as_str()));
+    let before = tokens.get(..index).unwrap_or(&[]).iter().rev().find(|token| token.what != What::Sign('('));
+    let after = tokens.get(index + 1..).unwrap_or(&[]).iter().find(|token| token.what != What::Sign(')'));
+    keyword(before, &["if", "and", "or", "not"]) || keyword(after, &["and", "or"])
 }
 
 fn inside_quotes(range: &Range<usize>) -> Range<usize> {
@@ -410,6 +426,8 @@ pub fn evaluate(recall: &Recall, lookup: &dyn Lookup) -> Result<Vec<Inline>, Dia
             .map_err(|message| Diagnostic::error(&recall.place, message));
     }
     match value.as_str() {
+        // A choice without `else` says nothing otherwise.
+        None if value.is_undefined() => Ok(Vec::new()),
         Some(text) => Ok(vec![Inline::Text { text: text.to_owned() }]),
         None => Err(Diagnostic::error(&recall.place, "this recall comes to neither a text nor a value")
             .expected("a name, or a choice of words with `if ... else ...`")),

@@ -1,2 +1,3 @@
 //! Every test of the project, in one binary.
+mod worksheet;
 mod yaml;
