@@ -218,7 +218,9 @@ fn island<'n>(
     if nodes.len() > MANY {
         names.push("others".into());
     }
-    let (what, names) = (if nodes.len() == 1 { "the node" } else { "the nodes" }, names.join(", "));
+    let (what, reach, have) =
+        if nodes.len() == 1 { ("the node", "reaches", "has") } else { ("the nodes", "reach", "have") };
+    let names = names.join(", ");
     let (capacitors, sources) = (borders(Conducts::Alternating), borders(Conducts::Forced));
     let (message, expected) = if !sources.is_empty() {
         (
@@ -227,11 +229,11 @@ fn island<'n>(
         )
     } else if !capacitors.is_empty() {
         (
-            format!("{what} {names} reach ground only through capacitors: {}", capacitors.join(", ")),
+            format!("{what} {names} {reach} ground only through capacitors: {}", capacitors.join(", ")),
             "a path for direct current, such as a resistor to ground",
         )
     } else {
-        (format!("{what} {names} have no path to ground"), "a connection to the rest of the circuit")
+        (format!("{what} {names} {have} no path to ground"), "a connection to the rest of the circuit")
     };
     Diagnostic::error(place, message).expected(expected)
 }

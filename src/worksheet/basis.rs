@@ -6,7 +6,7 @@ use std::ops::Range;
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::quantity::{self, Origin, Quantity, Source, Sourced};
 use crate::source::Place;
-use crate::yaml::{self, Node, Value};
+use crate::yaml::{self, Key, Node, Value};
 
 use super::fence::RawBlock;
 use super::page::Page;
@@ -79,6 +79,23 @@ pub(super) fn scalar(
     Some(Spot { value: text.trim().to_owned(), place })
 }
 
+/// Reports what a comma in an unquoted value leaves behind: words that became a key without a value.
+pub(super) fn refuse_loose_words(entries: &[(Key, Node)], diagnostics: &mut Diagnostics) -> bool {
+    let mut loose = false;
+    for (key, value) in entries {
+        let empty = matches!(&value.value, Value::Scalar(text) if text.is_empty());
+        if empty && !lines::is_name(&key.name) {
+            loose = true;
+            diagnostics.push(
+                Diagnostic::error(&key.place, format!("`{}` stands alone after a comma", key.name)).expected(
+                    "quotes round a value that holds a comma: `\"10.8 to 14.8 V, usually 12.6 V\"`",
+                ),
+            );
+        }
+    }
+    loose
+}
+
 fn entry(
     page: &Page,
     node: &Node,
@@ -88,6 +105,9 @@ fn entry(
     let Value::Map(entries) = &node.value else {
         return plain_entry(&scalar(page, node, EXAMPLE, diagnostics)?, clauses, diagnostics);
     };
+    if refuse_loose_words(entries, diagnostics) {
+        return None;
+    }
     yaml::refuse_unknown_keys(entries, &KEYS, diagnostics);
     let Some(value) = node.get("value") else {
         diagnostics.push(

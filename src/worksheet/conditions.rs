@@ -51,6 +51,9 @@ pub(super) fn read(
         names.push(name.value.clone());
         let named = lines::check_name(&name, diagnostics);
         let Some(fields) = diagnostics.keep(value.map(EXAMPLE)) else { continue };
+        if basis::refuse_loose_words(fields, diagnostics) {
+            continue;
+        }
         let mut condition =
             Condition { name, normal: true, lasts: None, overrides: Vec::new(), states: Vec::new() };
         for (key, value) in fields {

@@ -125,10 +125,10 @@ fn equals_sign(text: &str) -> Option<usize> {
 }
 
 /// Reports a name that is defined twice, or used before the line that defines it.
-/// `basis` gives the places of the names of the design basis.
+/// `elsewhere` gives the places of the names of the design basis and of the designators.
 pub(super) fn check_order(
     lines: &[DerivationLine],
-    basis: &BTreeMap<&str, &Place>,
+    elsewhere: &BTreeMap<&str, &Place>,
     diagnostics: &mut Diagnostics,
 ) {
     let mut defined: BTreeMap<&str, (usize, &Place)> = BTreeMap::new();
@@ -138,7 +138,7 @@ pub(super) fn check_order(
         match &line.what {
             DerivationKind::Define { name, formula } => {
                 collect(&formula.expr, &mut names);
-                let first = basis.get(name.value.as_str()).copied();
+                let first = elsewhere.get(name.value.as_str()).copied();
                 let first = first.or(defined.get(name.value.as_str()).map(|(_, place)| *place));
                 match first {
                     Some(first) => {

@@ -104,9 +104,11 @@ impl Blocks {
 
     /// Checks what the blocks and the prose say of each other.
     fn check(&self, body: &Body, head: Option<&Head>, diagnostics: &mut Diagnostics) {
-        let basis: BTreeMap<&str, &Place> =
-            self.basis_names.iter().map(|(name, place)| (name.as_str(), place)).collect();
-        derivation::check_order(&self.derivation, &basis, diagnostics);
+        let elsewhere: BTreeMap<&str, &Place> = (self.circuit.iter())
+            .map(|record| (record.key.value.as_str(), &record.key.place))
+            .chain(self.basis_names.iter().map(|(name, place)| (name.as_str(), place)))
+            .collect();
+        derivation::check_order(&self.derivation, &elsewhere, diagnostics);
         let conditions = (self.derivation.iter().filter_map(|line| line.condition.as_ref()))
             .chain(self.acceptance.iter().flat_map(|line| &line.conditions))
             .chain(self.figures.iter().filter_map(|figure| figure.condition.as_ref()))

@@ -23,6 +23,9 @@ pub(super) fn read(page: &Page, block: &RawBlock, out: &mut Vec<Record>, diagnos
             return;
         }
         let Some(fields) = diagnostics.keep(value.map(EXAMPLE)) else { continue };
+        if basis::refuse_loose_words(fields, diagnostics) {
+            continue;
+        }
         let mut read = Vec::new();
         for (name, value) in fields {
             let name = Spot { value: name.name.clone(), place: name.place.clone() };

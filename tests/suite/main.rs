@@ -1,3 +1,4 @@
 //! Every test of the project, in one binary.
+mod circuit;
 mod worksheet;
 mod yaml;

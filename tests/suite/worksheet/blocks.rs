@@ -56,9 +56,10 @@ fn basis_errors() {
     );
     let wrong = first("```basis\nV_a:  'bogus V'\n```\n");
     assert_eq!(wrong.place.map(|place| (place.line, place.column)), Some((9, 8)));
-    let comma = first("```basis\nV_a: {value: 10 V, usually 12 V}\n```\n");
-    assert_eq!(comma.severity, Severity::Error);
-    assert_eq!(comma.place.as_ref().map(|place| place.line), Some(9));
+    let comma = "9:20 `usually 12 V` stands alone after a comma";
+    assert_eq!(block("basis", "V_a: {value: 10 V, usually 12 V}\n"), [comma]);
+    let comma = "9:20 `usually 12 V` stands alone after a comma";
+    assert_eq!(block("circuit", "B1: {supply: 10 V, usually 12 V, plus: a}\n"), [comma]);
 }
 
 #[test]
