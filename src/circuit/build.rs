@@ -337,10 +337,10 @@ fn read_main(
     if rule.kind == ElementKind::Filament
         && let Some(pair) = reader.rated_pair(text, &designator)
     {
-        if let Ok((value, voltage, power)) = pair {
-            element.value = Some(value);
-            element.rated_voltage = Some(voltage);
-            element.rated_power = power;
+        if let Some(pair) = pair {
+            element.value = Some(pair.resistance);
+            element.rated_voltage = Some(pair.voltage);
+            element.rated_power = pair.power;
         }
         return;
     }

@@ -16,6 +16,13 @@ pub struct InPlace {
     pub description: Option<String>,
 }
 
+/// What the ratings of a filament say.
+pub(super) struct RatedPair {
+    pub resistance: Formula,
+    pub voltage: Formula,
+    pub power: Option<Formula>,
+}
+
 /// What values of one record are read with.
 pub(super) struct Reader<'a> {
     /// Names of the design basis.
@@ -87,13 +94,9 @@ impl Reader<'_> {
         self.formula(text, wanted)
     }
 
-    /// The rated voltage and power (or current) of a filament: `12 V 1.2 W ± 5 %`. Its hot resistance is the input; gives
-    /// resistance, rated voltage, and rated power where that was written.
-    pub fn rated_pair(
-        &mut self,
-        text: &Spot<String>,
-        symbol: &str,
-    ) -> Option<Result<(Formula, Formula, Option<Formula>), ()>> {
+    /// The rated voltage and power (or current) of a filament: `12 V 1.2 W ± 5 %`. Its hot resistance is the input.
+    /// `None`: the text is no such pair; `Some(None)`: it is one, and wrong.
+    pub fn rated_pair(&mut self, text: &Spot<String>, symbol: &str) -> Option<Option<RatedPair>> {
         let (first, second) = split_pair(text)?;
         let volts = quantity::parse(&first.value, &first.place).ok()?;
         if volts.kind != Kind::of(Dimension::VOLT) {
@@ -103,7 +106,7 @@ impl Reader<'_> {
             Ok(other) => other,
             Err(found) => {
                 self.diagnostics.push(found);
-                return Some(Err(()));
+                return Some(None);
             }
         };
         let is_power = other.kind == Kind::of(Dimension::WATT);
@@ -115,7 +118,7 @@ impl Reader<'_> {
                 Diagnostic::error(&second.place, format!("`{}` does not rate a filament", second.value))
                     .expected("rated voltage, then rated power or current above zero: `12 V 1.2 W ± 5 %`"),
             );
-            return Some(Err(()));
+            return Some(None);
         }
         // A filament that takes more power at its rated voltage has the lower resistance.
         let ohms = |v: f64, other: f64| if is_power { v * v / other } else { v / other };
@@ -132,11 +135,11 @@ impl Reader<'_> {
             self.diagnostics.push(
                 Diagnostic::error(&text.place, "these ratings give no resistance").expected("`12 V 1.2 W`"),
             );
-            return Some(Err(()));
+            return Some(None);
         }
         let value = self.input(quantity, text, symbol);
         let power = is_power.then(|| literal(&other, &second));
-        Some(Ok((value, literal(&volts, &first), power)))
+        Some(Some(RatedPair { resistance: value, voltage: literal(&volts, &first), power }))
     }
 
     fn in_place(

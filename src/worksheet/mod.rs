@@ -220,6 +220,8 @@ pub struct CriterionLine {
     pub block: usize,
 }
 
+/// There are few of these; a box would only stand in the way of matching.
+#[allow(clippy::large_enum_variant)]
 #[derive(Clone, Debug)]
 pub enum CriterionKind {
     Relation(Relation),
