@@ -17,3 +17,4 @@ pub mod spread;
 pub mod stress;
 pub mod caution;
 pub mod study;
+pub mod redline;
