@@ -18,3 +18,4 @@ pub mod stress;
 pub mod caution;
 pub mod study;
 pub mod redline;
+pub mod report;

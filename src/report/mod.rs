@@ -1,0 +1,5 @@
+//! Findings, moves, issue data, templates -> PDF.
+
+mod press;
+
+pub use press::*;
