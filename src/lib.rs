@@ -18,4 +18,5 @@ pub mod stress;
 pub mod caution;
 pub mod study;
 pub mod redline;
+pub mod figure;
 pub mod report;
