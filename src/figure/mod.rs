@@ -9,17 +9,22 @@ mod ticks;
 
 pub use ticks::{Tick, ticks};
 
-use plotters::prelude::{BLACK, Circle, DrawingBackend, IntoDrawingArea, PathElement, RGBColor, Rectangle, SVGBackend, WHITE};
+use plotters::prelude::{
+    BLACK, Circle, DrawingBackend, IntoDrawingArea, PathElement, RGBColor, Rectangle, SVGBackend, WHITE,
+};
 use plotters::style::{Color, ShapeStyle};
 
-use crate::study::{AxisFinding, CurveStyle, FigureFinding};
+use crate::study::{AxisFinding, Curve, CurveStyle, FigureFinding};
 
 /// Size of the plotting area and of the borders around it, in points.
-const PLOT: (f64, f64) = (300.0, 186.0);
-const LEFT: f64 = 44.0;
-const RIGHT: f64 = 96.0;
-const TOP: f64 = 8.0;
-const BOTTOM: f64 = 34.0;
+const PLOT: (f64, f64) = (248.0, 164.0);
+const LEFT: f64 = 30.0;
+const RIGHT: f64 = 98.0;
+const TOP: f64 = 20.0;
+const BOTTOM: f64 = 32.0;
+/// Where the sample of a curve's line begins and ends, and where its name begins, from the right side of the plot.
+const SAMPLE: (f64, f64) = (5.0, 22.0);
+const NAME: f64 = 26.0;
 /// Units of the canvas per point.
 const SCALE: f64 = 10.0;
 /// Least distance between names at the right border, in points.
@@ -36,7 +41,9 @@ pub struct Drawing {
     /// Labelled ticks: place along the axis and label.
     pub x_ticks: Vec<(f64, String)>,
     pub y_ticks: Vec<(f64, String)>,
-    /// Names of curves at the right border: height of the name, height of the curve's end, name.
+    /// Names of curves at the right border begin here.
+    pub name: f64,
+    /// Height of each name, and the name.
     pub names: Vec<(f64, String)>,
     /// Names of marks: place of the mark and name.
     pub marks: Vec<(f64, f64, String)>,
@@ -50,9 +57,10 @@ pub fn draw(figure: &FigureFinding) -> Drawing {
     let x_all = x.ticks(7);
     let y_all = y.ticks(6);
     let mut svg = String::new();
-    let mut ends = Vec::new();
+    let mut ends: Vec<(f64, &Curve)> = Vec::new();
     {
-        let area = SVGBackend::with_string(&mut svg, (units(width) as u32, units(height) as u32)).into_drawing_area();
+        let area = SVGBackend::with_string(&mut svg, (units(width) as u32, units(height) as u32))
+            .into_drawing_area();
         let mut pen = Pen { area: &area };
         for (at, label) in &x_all {
             pen.tick((*at, TOP + PLOT.1), (*at, TOP), !label.is_empty());
@@ -63,16 +71,16 @@ pub fn draw(figure: &FigureFinding) -> Drawing {
         pen.frame();
         for curve in &figure.curves {
             let runs = line::runs(&curve.points, &x, &y);
-            let (pattern, weight) = stroke(curve.style);
-            for run in &runs {
-                for dash in line::dashes(run, pattern) {
-                    pen.path(&dash, weight, &BLACK);
-                }
-            }
+            runs.iter().for_each(|run| pen.stroke(run, curve.style));
             if let Some(end) = line::name_end(&runs) {
                 leader(&mut pen, end);
-                ends.push((end.1, curve.name.clone()));
+                ends.push((end.1, curve));
             }
+        }
+        spread_names(&mut ends);
+        for (at, curve) in &ends {
+            let border = LEFT + PLOT.0;
+            pen.stroke(&[(border + SAMPLE.0, *at), (border + SAMPLE.1, *at)], curve.style);
         }
         for mark in &figure.marks {
             if let (Some(px), Some(py)) = (x.inside(mark.x), y.inside(mark.y)) {
@@ -95,7 +103,8 @@ pub fn draw(figure: &FigureFinding) -> Drawing {
         plot: [LEFT, TOP, PLOT.0, PLOT.1],
         x_ticks: labelled(x_all),
         y_ticks: labelled(y_all),
-        names: spread_names(ends),
+        name: LEFT + PLOT.0 + NAME,
+        names: ends.into_iter().map(|(at, curve)| (at, curve.name.clone())).collect(),
         marks,
     }
 }
@@ -171,10 +180,10 @@ fn stroke(style: CurveStyle) -> (&'static [f64], f64) {
 }
 
 /// Moves names apart that would overprint, keeping their order, inside the height of the plot where that is possible.
-fn spread_names(mut names: Vec<(f64, String)>) -> Vec<(f64, String)> {
+fn spread_names(names: &mut [(f64, &Curve)]) {
     names.sort_by(|a, b| a.0.total_cmp(&b.0));
     let mut least = f64::NEG_INFINITY;
-    for (at, _) in &mut names {
+    for (at, _) in names.iter_mut() {
         *at = at.max(least);
         least = *at + NAME_STEP;
     }
@@ -183,7 +192,6 @@ fn spread_names(mut names: Vec<(f64, String)>) -> Vec<(f64, String)> {
         *at = at.min(most);
         most = *at - NAME_STEP;
     }
-    names
 }
 
 /// A hairline from the end of a curve inside the plot to the right border, so that its name finds it.
@@ -208,14 +216,18 @@ impl<DB: DrawingBackend> Pen<'_, DB> {
         let _ = self.area.draw(&PathElement::new(points, line_style(weight, colour)));
     }
 
+    fn stroke(&mut self, run: &[(f64, f64)], style: CurveStyle) {
+        let (pattern, weight) = stroke(style);
+        line::dashes(run, pattern).iter().for_each(|dash| self.path(dash, weight, &BLACK));
+    }
+
     /// A grid line from the axis across the plot, with a tick outside it.
     fn tick(&mut self, from: (f64, f64), to: (f64, f64), labelled: bool) {
         if labelled {
             self.path(&[from, to], 0.3, &PALE);
         }
         let length = if labelled { 3.5 } else { 1.8 };
-        let outside =
-            if from.0 == to.0 { (from.0, from.1 + length) } else { (from.0 - length, from.1) };
+        let outside = if from.0 == to.0 { (from.0, from.1 + length) } else { (from.0 - length, from.1) };
         self.path(&[from, outside], 0.5, &BLACK);
     }
 

@@ -55,11 +55,8 @@ fn decades(low: f64, high: f64, wanted: usize) -> Vec<Tick> {
             if at < low * (1.0 - 1e-9) || at > high * (1.0 + 1e-9) {
                 continue;
             }
-            let labelled = if digit == 1 {
-                (exponent - first) % every == 0
-            } else {
-                few && (digit == 2 || digit == 5)
-            };
+            let labelled =
+                if digit == 1 { (exponent - first) % every == 0 } else { few && (digit == 2 || digit == 5) };
             let label = if labelled { decade_label(digit, exponent) } else { String::new() };
             out.push(Tick { at, label });
         }

@@ -1,6 +1,6 @@
 //! Printed values for table columns: the decimal points and the units of a column stand below each other.
 
-use serde_json::{Value, json};
+use serde_json::Value;
 
 use crate::quantity::{Dimension, Kind, Shown, Unit};
 
@@ -51,11 +51,8 @@ pub fn significant(value: f64, digits: usize, trim: bool) -> String {
     let exponent: i32 = exponent.parse().unwrap_or(0);
     let plain = if (-4..7).contains(&exponent) {
         let decimals = (digits as i32 - 1 - exponent).max(0) as usize;
-        let rounded = if exponent >= digits as i32 {
-            scientific.parse::<f64>().unwrap_or(value)
-        } else {
-            value
-        };
+        let rounded =
+            if exponent >= digits as i32 { scientific.parse::<f64>().unwrap_or(value) } else { value };
         let text = format!("{rounded:.decimals$}");
         if trim { trimmed(&text) } else { text }
     } else {
@@ -106,16 +103,8 @@ pub fn common_unit(kind: Kind, values: impl IntoIterator<Item = f64>) -> Unit {
     if largest == 0.0 || !PREFIXED.contains(&kind.dimension) {
         return plain(&base);
     }
-    const PREFIXES: [(&str, f64); 8] = [
-        ("G", 1e9),
-        ("M", 1e6),
-        ("k", 1e3),
-        ("", 1.0),
-        ("m", 1e-3),
-        ("µ", 1e-6),
-        ("n", 1e-9),
-        ("p", 1e-12),
-    ];
+    const PREFIXES: [(&str, f64); 8] =
+        [("G", 1e9), ("M", 1e6), ("k", 1e3), ("", 1.0), ("m", 1e-3), ("µ", 1e-6), ("n", 1e-9), ("p", 1e-12)];
     let (prefix, factor) =
         PREFIXES.into_iter().find(|(_, factor)| largest >= factor * 0.9995).unwrap_or(("p", 1e-12));
     Unit { symbol: format!("{prefix}{base}"), kind, factor, offset: 0.0 }
@@ -126,50 +115,54 @@ pub fn shown(value: &Shown, unit: &Unit) -> Option<Number> {
     value.value().map(|value| number(value, unit, DIGITS, false))
 }
 
-/// Sets the numbers of a column below each other: padding before the digits and between digits and unit, in em.
+/// The numbers of a column as text, padded with figure spaces so that decimal points and units stand below each other in
+/// a face with tabular digits; `null` where there is none.
 pub fn column(numbers: Vec<Option<Number>>) -> Vec<Value> {
-    let widths: Vec<Option<(f64, f64)>> = numbers.iter().map(|n| n.as_ref().map(parts)).collect();
-    let most = |pick: fn(&(f64, f64)) -> f64| {
-        widths.iter().flatten().map(pick).fold(0.0f64, |most, width| most.max(width))
+    let widths: Vec<Option<[usize; 2]>> = numbers.iter().map(|n| n.as_ref().map(parts)).collect();
+    // A number with very many digits stands out instead of pushing its whole column aside.
+    let most = |side: usize, cap: usize| {
+        widths.iter().flatten().map(|width| width[side]).filter(|width| *width <= cap).max().unwrap_or(0)
     };
-    // A number with many digits would push the whole column aside; beyond this it stands out to the left.
-    let (before, after) = (most(|w| w.0).min(4.0), most(|w| w.1).min(3.0));
-    let set = |(number, width): (&Option<Number>, &Option<(f64, f64)>)| match (number, width) {
-        (Some(number), Some((left, right))) => json!({
-            "r": number.before, "d": number.digits, "u": number.unit,
-            "a": round(before - left), "b": round(after - right),
-        }),
+    let (before, after) = (most(0, 5), most(1, 5));
+    let set = |(number, width): (&Option<Number>, &Option<[usize; 2]>)| match (number, width) {
+        (Some(number), Some([left, right])) => {
+            let mut out = String::new();
+            if !number.before.is_empty() {
+                out.push_str(&number.before);
+                out.push(SPACE);
+            }
+            pad(&mut out, before.saturating_sub(*left));
+            out.push_str(&number.digits);
+            if !number.unit.is_empty() {
+                let missing = after.saturating_sub(*right);
+                if missing > 0 && *right == 0 {
+                    out.push(POINT_SPACE);
+                    pad(&mut out, missing - 1);
+                } else {
+                    pad(&mut out, missing);
+                }
+                out.push(SPACE);
+                out.push_str(&number.unit);
+            }
+            Value::String(out)
+        }
         _ => Value::Null,
     };
     numbers.iter().zip(&widths).map(set).collect()
 }
 
-/// Width in em of what stands before the decimal point and of what follows it, in the text face with tabular digits.
-fn parts(number: &Number) -> (f64, f64) {
-    let (whole, rest) = match number.digits.find('.') {
-        Some(at) => number.digits.split_at(at),
-        None => (number.digits.as_str(), ""),
-    };
-    let before = if number.before.is_empty() { 0.0 } else { width(&number.before) + SPACE };
-    (before + width(whole), width(rest))
+const SPACE: char = '\u{a0}';
+/// As wide as a digit, and as wide as a point.
+const DIGIT_SPACE: char = '\u{2007}';
+const POINT_SPACE: char = '\u{2008}';
+
+fn pad(out: &mut String, digits: usize) {
+    out.extend(std::iter::repeat_n(DIGIT_SPACE, digits));
 }
 
-/// Advance widths of the text face in em: digits, sign and point; anything else counts as a digit.
-const DIGIT: f64 = 0.465;
-const SPACE: f64 = 0.25;
-
-fn width(text: &str) -> f64 {
-    text.chars()
-        .map(|c| match c {
-            '−' | '≤' | '≥' | '<' | '>' | '=' | '×' | '±' => 0.56,
-            '.' => 0.24,
-            '\u{a0}' => SPACE,
-            '⁰'..='⁹' | '¹' | '²' | '³' | '⁻' => 0.3,
-            _ => DIGIT,
-        })
-        .sum()
-}
-
-fn round(em: f64) -> f64 {
-    (em.max(0.0) * 1000.0).round() / 1000.0
+/// Characters before the decimal point, and from the decimal point on.
+fn parts(number: &Number) -> [usize; 2] {
+    let length = number.digits.chars().count();
+    let before = number.digits.chars().take_while(|c| *c != '.').count();
+    [before, length - before]
 }

@@ -132,7 +132,9 @@ fn attach(
     for (path, file) in &files.files {
         let (relation, what) = match path.rsplit('.').next() {
             Some("md") => ("source", "The worksheet that this note was computed from"),
-            Some("yaml" | "yml") => ("source", "Part record, policy or settings that this note was computed from"),
+            Some("yaml" | "yml") => {
+                ("source", "Part record, policy or settings that this note was computed from")
+            }
             Some("typ") => ("supplement", "Template of this notebook"),
             _ => ("supplement", "File that the worksheet refers to"),
         };

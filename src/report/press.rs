@@ -130,7 +130,10 @@ impl World for Desk<'_> {
 /// Errors name the template, line and column. Pure: the same sources give the same bytes.
 pub fn press(sources: &Sources) -> (Result<Vec<u8>, Diagnostics>, Diagnostics) {
     let Some(main) = file_id("note.typ") else {
-        return (Err(Diagnostic::bare("the template note.typ cannot be named").into()), Diagnostics::default());
+        return (
+            Err(Diagnostic::bare("the template note.typ cannot be named").into()),
+            Diagnostics::default(),
+        );
     };
     let mut texts = BTreeMap::new();
     for (path, bytes) in sources.files.iter().filter(|(path, _)| path.ends_with(".typ")) {
@@ -144,8 +147,9 @@ pub fn press(sources: &Sources) -> (Result<Vec<u8>, Diagnostics>, Diagnostics) {
     let warned = typst::compile::<PagedDocument>(&desk);
     let warnings = Diagnostics(warned.warnings.iter().map(|warning| translate(&desk, warning)).collect());
     let pdf = warned.output.and_then(|document| {
-        let standards = PdfStandards::new(&[PdfStandard::A_3a, PdfStandard::Ua_1])
-            .map_err(|error| typst::ecow::eco_vec![SourceDiagnostic::error(Span::detached(), error.message().clone())])?;
+        let standards = PdfStandards::new(&[PdfStandard::A_3a, PdfStandard::Ua_1]).map_err(|error| {
+            typst::ecow::eco_vec![SourceDiagnostic::error(Span::detached(), error.message().clone())]
+        })?;
         let options = PdfOptions {
             ident: Smart::Custom(sources.ident.clone()),
             creator: Smart::Custom(Some(sources.creator.clone())),

@@ -60,8 +60,9 @@ pub(super) fn render(
     context: &Value,
 ) -> Result<BTreeMap<String, Arc<[u8]>>, Diagnostics> {
     let environment = environment();
-    let context: Word = serde_json::from_value(context.clone())
-        .map_err(|error| Diagnostic::bare(format!("the note's head cannot be given to templates: {error}")))?;
+    let context: Word = serde_json::from_value(context.clone()).map_err(|error| {
+        Diagnostic::bare(format!("the note's head cannot be given to templates: {error}"))
+    })?;
     let mut out = BTreeMap::new();
     let mut errors = Diagnostics::default();
     for (name, text) in templates {
@@ -111,6 +112,8 @@ fn literal(text: &str) -> String {
 fn diagnostic(name: &str, error: &minijinja::Error) -> Diagnostic {
     let file: Arc<str> = format!("{FOLDER}{}", error.name().unwrap_or(name)).into();
     let line = error.line().and_then(|line| u32::try_from(line).ok()).unwrap_or(1);
-    let what = error.detail().map_or_else(|| error.kind().to_string(), |detail| format!("{}: {detail}", error.kind()));
+    let what = error
+        .detail()
+        .map_or_else(|| error.kind().to_string(), |detail| format!("{}: {detail}", error.kind()));
     Diagnostic::error(&Place::new(&file, line, 1, 0), format!("template: {what}"))
 }

@@ -153,7 +153,8 @@ fn inline(piece: &Inline) -> Value {
 /// Links lead to the web or to mail; anything else is printed as words.
 fn safe_target(target: &str) -> Option<&str> {
     let known = ["https://", "http://", "mailto:"].iter().any(|scheme| target.starts_with(scheme));
-    (known && target.len() < 2000 && !target.chars().any(|c| c.is_control() || c.is_whitespace())).then_some(target)
+    (known && target.len() < 2000 && !target.chars().any(|c| c.is_control() || c.is_whitespace()))
+        .then_some(target)
 }
 
 fn aloud<'a>(spoken: &'a str, otherwise: &'a str) -> &'a str {
@@ -166,10 +167,14 @@ pub(super) fn derivation(findings: &Findings) -> Value {
     for (i, found) in findings.derivation.iter().enumerate() {
         blocks.entry(found.block).or_default().push(step(i + 1, found));
     }
-    json!(blocks.into_iter().map(|(block, steps)| json!({"block": block, "steps": steps})).collect::<Vec<_>>())
+    json!(
+        blocks.into_iter().map(|(block, steps)| json!({"block": block, "steps": steps})).collect::<Vec<_>>()
+    )
 }
 
 fn step(number: usize, found: &Step) -> Value {
+    let defined = found.symbol.as_ref().map_or(0.0, em);
+    let wide = defined + em(&found.symbols).max(em(&found.numbers)) > 0.8 * WIDEST;
     let result = found.result.value().map(|value| cell::number(value, &found.unit, DIGITS, false));
     let reason = match &found.result {
         crate::quantity::Shown::NotShown(reason) => Some(rich(reason)),
@@ -180,6 +185,7 @@ fn step(number: usize, found: &Step) -> Value {
         "label": rich(&found.label),
         "condition": found.condition,
         "symbol": found.symbol,
+        "wide": wide,
         "symbols": broken(&found.symbols),
         "numbers": broken(&found.numbers),
         "result": result.map(|n| json!({"digits": n.digits, "unit": n.unit})),
@@ -199,9 +205,7 @@ fn broken(math: &Math) -> Vec<Value> {
     let mut lines: Vec<Vec<&Math>> = vec![Vec::new()];
     let mut width = 0.0;
     let mut piece: Vec<&Math> = Vec::new();
-    let breakable = |part: &Math| {
-        matches!(part, Math::Operator { sign } if ["+", "−", "-", "·", "×", "∥", "=", "≤", "≥", "<", ">"].contains(&sign.as_str()))
-    };
+    let breakable = |part: &Math| matches!(part, Math::Operator { sign } if ["+", "−", "-", "·", "×", "∥", "=", "≤", "≥", "<", ">"].contains(&sign.as_str()));
     for part in parts.iter().map(Some).chain([None]) {
         if part.is_none_or(breakable) {
             let piece_width: f64 = piece.iter().map(|part| em(part)).sum();
@@ -237,7 +241,9 @@ fn em(math: &Math) -> f64 {
             letters(name) + 0.7 + arguments.iter().map(|argument| em(argument) + 0.5).sum::<f64>()
         }
         Math::Cases { branches } => {
-            let branch = |(value, condition): &(Math, Option<Math>)| em(value) + condition.as_ref().map_or(4.0, em) + 2.5;
+            let branch = |(value, condition): &(Math, Option<Math>)| {
+                em(value) + condition.as_ref().map_or(4.0, em) + 2.5
+            };
             branches.iter().map(branch).fold(0.0, f64::max)
         }
     }

@@ -83,9 +83,7 @@ pub(crate) fn drawings(findings: &Findings) -> Vec<String> {
 
 fn drawing(index: usize, finding: &crate::study::FigureFinding) -> Value {
     let drawn = figure::draw(finding);
-    let axis = |axis: &crate::study::AxisFinding| {
-        json!({"title": axis.title, "symbol": axis.symbol, "unit": axis.unit.symbol})
-    };
+    let axis = |axis: &crate::study::AxisFinding| json!({"title": axis.title, "symbol": axis.symbol, "unit": axis.unit.symbol});
     json!({
         "file": format!("figure/{index}.svg"),
         "title": rich(&finding.title),
@@ -93,6 +91,7 @@ fn drawing(index: usize, finding: &crate::study::FigureFinding) -> Value {
         "width": drawn.width, "height": drawn.height, "plot": drawn.plot,
         "x": axis(&finding.x), "y": axis(&finding.y),
         "x_ticks": drawn.x_ticks, "y_ticks": drawn.y_ticks,
+        "name": drawn.name,
         "names": drawn.names.iter().map(|(at, name)| json!([at, rich(name)])).collect::<Vec<_>>(),
         "marks": drawn.marks.iter().map(|(x, y, name)| json!([x, y, rich(name)])).collect::<Vec<_>>(),
     })

@@ -157,7 +157,9 @@ fn worst(finding: &CriterionFinding) -> Option<Number> {
     let order = |text: &Number, bound: &Number| parse(text).partial_cmp(&parse(bound));
     let bound = cell::number(limit, &finding.unit, 15, true);
     let digits = (DIGITS..=12)
-        .find(|digits| order(&cell::number(value, &finding.unit, *digits, false), &bound) == value.partial_cmp(&limit))
+        .find(|digits| {
+            order(&cell::number(value, &finding.unit, *digits, false), &bound) == value.partial_cmp(&limit)
+        })
         .unwrap_or(DIGITS);
     Some(cell::number(value, &finding.unit, digits, false))
 }

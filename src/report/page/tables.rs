@@ -31,38 +31,40 @@ pub(super) fn basis(findings: &Findings) -> Value {
         groups[group].1.push(input);
     }
     let groups = groups.into_iter().filter(|(_, inputs)| !inputs.is_empty());
-    json!(groups
-        .map(|(title, inputs)| {
-            let numbers = |pick: fn(&Input) -> f64| {
-                let printed = |input: &&Input| {
-                    let exact = input.spread.is_exact();
-                    let unit = &input.unit;
-                    let nominal = pick(input) == input.spread.nominal;
-                    (!exact || nominal).then(|| cell::number(pick(input), unit, DIGITS, true))
+    json!(
+        groups
+            .map(|(title, inputs)| {
+                let numbers = |pick: fn(&Input) -> f64| {
+                    let printed = |input: &&Input| {
+                        let exact = input.spread.is_exact();
+                        let unit = &input.unit;
+                        let nominal = pick(input) == input.spread.nominal;
+                        (!exact || nominal).then(|| cell::number(pick(input), unit, DIGITS, true))
+                    };
+                    cell::column(inputs.iter().map(printed).collect())
                 };
-                cell::column(inputs.iter().map(printed).collect())
-            };
-            let columns = numbers(|i| i.spread.low).into_iter().zip(numbers(|i| i.spread.nominal));
-            let columns = columns.zip(numbers(|i| i.spread.high));
-            let rows: Vec<Value> = inputs
-                .iter()
-                .zip(columns)
-                .map(|(input, ((low, nominal), high))| {
-                    let exact = input.spread.is_exact();
-                    json!({
-                        "symbol": symbol_or_words(&input.symbol),
-                        "description": input.description.as_ref().map(|text| rich(text)),
-                        "text": input.text,
-                        "low": if exact { Value::Null } else { low },
-                        "nominal": nominal,
-                        "high": if exact { Value::Null } else { high },
-                        "source": source(input.source.as_ref()),
+                let columns = numbers(|i| i.spread.low).into_iter().zip(numbers(|i| i.spread.nominal));
+                let columns = columns.zip(numbers(|i| i.spread.high));
+                let rows: Vec<Value> = inputs
+                    .iter()
+                    .zip(columns)
+                    .map(|(input, ((low, nominal), high))| {
+                        let exact = input.spread.is_exact();
+                        json!({
+                            "symbol": symbol_or_words(&input.symbol),
+                            "description": input.description.as_ref().map(|text| rich(text)),
+                            "text": input.text,
+                            "low": if exact { Value::Null } else { low },
+                            "nominal": nominal,
+                            "high": if exact { Value::Null } else { high },
+                            "source": source(input.source.as_ref()),
+                        })
                     })
-                })
-                .collect();
-            json!({"title": title, "rows": rows})
-        })
-        .collect::<Vec<_>>())
+                    .collect();
+                json!({"title": title, "rows": rows})
+            })
+            .collect::<Vec<_>>()
+    )
 }
 
 /// `Q1 gain` is words, `Q1.I_C` and `V_bat` are symbols.
@@ -202,7 +204,8 @@ fn point(point: &OperatingFinding, units: &PointUnits) -> Value {
         cell::column(elements.iter().map(|e| some(e.3, &units.heat)).collect()),
     ];
     let element = |(i, (designator, ..)): (usize, &(String, f64, f64, f64))| {
-        let cells: Vec<Value> = element_columns.iter().map(|c| c.get(i).cloned().unwrap_or_default()).collect();
+        let cells: Vec<Value> =
+            element_columns.iter().map(|c| c.get(i).cloned().unwrap_or_default()).collect();
         json!({"designator": designator, "cells": cells})
     };
     json!({
@@ -321,9 +324,7 @@ pub(super) fn fits(findings: &Findings) -> Value {
             })
         };
         let part = findings.parts.iter().find(|part| part.name == model.part);
-        let axis = |axis: &crate::fit::SpreadAxis| {
-            json!({"name": rich(&axis.name), "low": bound(&axis.low), "high": bound(&axis.high)})
-        };
+        let axis = |axis: &crate::fit::SpreadAxis| json!({"name": rich(&axis.name), "low": bound(&axis.low), "high": bound(&axis.high)});
         json!({
             "part": model.part,
             "description": part.map(|part| rich(&part.description)),
@@ -378,7 +379,8 @@ pub(super) fn trace(findings: &Findings) -> Value {
         let answers: Vec<Value> = labels
             .iter()
             .map(|label| {
-                let (_, key, words) = verdicts.get(label.as_str()).cloned().unwrap_or((1, "not-shown", String::new()));
+                let (_, key, words) =
+                    verdicts.get(label.as_str()).cloned().unwrap_or((1, "not-shown", String::new()));
                 json!({"label": label, "key": key, "verdict": words})
             })
             .collect();

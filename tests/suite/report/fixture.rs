@@ -78,7 +78,15 @@ fn placed(word: &str, index: usize) -> Flow {
     Flow::Placed { word: word.into(), index }
 }
 
-fn input(name: &str, what: Option<&str>, low: f64, nominal: f64, high: f64, u: &str, from: Option<Source>) -> Input {
+fn input(
+    name: &str,
+    what: Option<&str>,
+    low: f64,
+    nominal: f64,
+    high: f64,
+    u: &str,
+    from: Option<Source>,
+) -> Input {
     let unit = unit(u);
     let si = |v: f64| v * unit.factor + unit.offset;
     Input {
@@ -96,23 +104,95 @@ fn input(name: &str, what: Option<&str>, low: f64, nominal: f64, high: f64, u: &
 fn inputs() -> Vec<Input> {
     use Origin::*;
     vec![
-        input("V_bat", Some("battery at the lantern's terminals"), 10.8, 12.6, 14.8, "V", source(Specification, "battery sheet rev 3 p. 4")),
-        input("V_drive", Some("logic output, high"), 4.4, 4.6, 4.8, "V", source(Measurement, "bench book 7 p. 31")),
+        input(
+            "V_bat",
+            Some("battery at the lantern's terminals"),
+            10.8,
+            12.6,
+            14.8,
+            "V",
+            source(Specification, "battery sheet rev 3 p. 4"),
+        ),
+        input(
+            "V_drive",
+            Some("logic output, high"),
+            4.4,
+            4.6,
+            4.8,
+            "V",
+            source(Measurement, "bench book 7 p. 31"),
+        ),
         input("V_off", Some("logic output, low"), 0.0, 0.1, 0.4, "V", None),
-        input("T_a", Some("inside the lantern"), -20.0, 25.0, 50.0, "°C", source(Specification, "LB-1 clause 3.2")),
+        input(
+            "T_a",
+            Some("inside the lantern"),
+            -20.0,
+            25.0,
+            50.0,
+            "°C",
+            source(Specification, "LB-1 clause 3.2"),
+        ),
         input("t_on", None, 0.3, 0.3, 0.3, "", source(Calculation, "flash code Fl(2) 5 s")),
-        input("k_min", Some("least overdrive wanted"), 1.5, 1.5, 1.5, "", source(Memory, "usual for lamp loads")),
+        input(
+            "k_min",
+            Some("least overdrive wanted"),
+            1.5,
+            1.5,
+            1.5,
+            "",
+            source(Memory, "usual for lamp loads"),
+        ),
         input("R1", None, 446.5, 470.0, 493.5, "Ω", source(DataSheet, "RX-5 family rev 2 p. 1")),
         input("R2", None, 9500.0, 10000.0, 10500.0, "Ω", source(DataSheet, "RX-5 family rev 2 p. 1")),
-        input("DS1", Some("hot filament"), 108.0, 120.0, 132.0, "Ω", source(Assumption, "lamp sheet gives power only; 10 % taken")),
-        input("R_cold", Some("cold filament"), 11.2, 14.0, 16.8, "Ω", source(Measurement, "bench book 7 p. 33, six lamps")),
+        input(
+            "DS1",
+            Some("hot filament"),
+            108.0,
+            120.0,
+            132.0,
+            "Ω",
+            source(Assumption, "lamp sheet gives power only; 10 % taken"),
+        ),
+        input(
+            "R_cold",
+            Some("cold filament"),
+            11.2,
+            14.0,
+            16.8,
+            "Ω",
+            source(Measurement, "bench book 7 p. 33, six lamps"),
+        ),
         input("R_w", Some("wiring, both ways"), 0.05, 0.1, 0.2, "Ω", source(Assumption, "4 m of 0.75 mm²")),
         input("Q1 gain", None, 90.0, 180.0, 450.0, "", source(DataSheet, "LBN-250 rev 1 p. 2, h_FE")),
         input("Q1 V_BE", None, 0.62, 0.7, 0.82, "V", source(DataSheet, "LBN-250 rev 1 p. 2")),
-        input("Q1 saturation", None, 0.06, 0.12, 0.35, "V", source(DataSheet, "LBN-250 rev 1 p. 2, V_CE(sat)")),
+        input(
+            "Q1 saturation",
+            None,
+            0.06,
+            0.12,
+            0.35,
+            "V",
+            source(DataSheet, "LBN-250 rev 1 p. 2, V_CE(sat)"),
+        ),
         input("Q1 leakage", None, 0.0, 5.0, 100.0, "µA", source(DataSheet, "LBN-250 rev 1 p. 2, I_CBO")),
-        input("R_th", Some("junction to ambient, mounted"), 180.0, 200.0, 220.0, "K/W", source(DataSheet, "LBN-250 rev 1 p. 1")),
-        input("ϑ_буй", Some("температура корпуса буя"), -10.0, 15.0, 45.0, "°C", source(Measurement, "журнал 4, лист 12")),
+        input(
+            "R_th",
+            Some("junction to ambient, mounted"),
+            180.0,
+            200.0,
+            220.0,
+            "K/W",
+            source(DataSheet, "LBN-250 rev 1 p. 1"),
+        ),
+        input(
+            "ϑ_буй",
+            Some("температура корпуса буя"),
+            -10.0,
+            15.0,
+            45.0,
+            "°C",
+            source(Measurement, "журнал 4, лист 12"),
+        ),
         input("V_лампа", Some("напряжение на лампе"), 10.0, 12.0, 14.0, "V", source(Standard, "IEC 60064")),
         input("I_max", None, 0.15, 0.15, 0.15, "A", source(Standard, "LB-1 clause 3.5")),
         input("η_λ", Some("useful light"), 0.02, 0.04, 0.06, "", source(Memory, "order of magnitude")),
@@ -120,7 +200,13 @@ fn inputs() -> Vec<Input> {
 }
 
 fn end(value: Shown, corner: &[(&str, &str)], condition: &str, established: Established) -> End {
-    End { value, corner: pairs(corner), condition: condition.into(), thermal: "equilibrium".into(), established }
+    End {
+        value,
+        corner: pairs(corner),
+        condition: condition.into(),
+        thermal: "equilibrium".into(),
+        established,
+    }
 }
 
 struct Wanted<'a> {
@@ -157,7 +243,13 @@ fn criterion(w: Wanted) -> CriterionFinding {
         relation: w.relation.into(),
         worst: end(
             not_shown.clone().unwrap_or(Shown::Value(si(w.worst))),
-            &[("V_bat", "14.8 V"), ("V_drive", "4.4 V"), ("Q1 gain", "low"), ("R1", "493.5 Ω"), ("T_a", "-20 °C")],
+            &[
+                ("V_bat", "14.8 V"),
+                ("V_drive", "4.4 V"),
+                ("Q1 gain", "low"),
+                ("R1", "493.5 Ω"),
+                ("T_a", "-20 °C"),
+            ],
             "on",
             Established::Searched,
         ),
@@ -181,19 +273,153 @@ fn criteria() -> Vec<CriterionFinding> {
         criterion(Wanted { label, math, spoken, relation, unit, worst, limit, clause, verdict, flags })
     };
     vec![
-        make("saturated", below("", "n", "od", "≥", "1.5", ""), "overdrive of Q1", "≥", "", 1.82, 1.5, Some("LB-1 3.4"), met(), &["Q1 stays saturated at all corners"]),
-        make("cool", below("Q1", "T", "j", "≤", "125", "°C"), "junction temperature of Q1", "≤", "°C", 71.43, 125.0, Some("LB-1 3.6"), met(), &["an extreme lies inside Q1 gain (at 212)"]),
-        make("dark", below("DS1", "I", "", "≤", "1", "mA"), "lamp current when off", "≤", "mA", 0.1104, 1.0, Some("LB-1 3.7"), met(), &[]),
-        make("bright", below("DS1", "V", "", "≥", "10", "V"), "lamp voltage", "≥", "V", 10.38, 10.0, Some("LB-1 3.3"), assumed(2), &[]),
-        make("inrush", below("Q1", "I", "C", "≤", "1", "A"), "collector current at inrush", "≤", "A", 1.0437, 1.0, Some("LB-1 3.5"), Verdict::NotMet, &["Q1 leaves saturation above 0.92 A"]),
-        make("drive", below("PS1", "I", "", "≤", "12", "mA"), "drive current", "≤", "mA", 9.126, 12.0, Some("drive sheet p. 3"), met(), &[]),
-        make("drop", below("Q1", "V", "CE", "≤", "400", "mV"), "voltage across Q1", "≤", "mV", 331.2, 400.0, None, met(), &[]),
-        make("switching edge of the lamp current", below("", "t", "f", "≤", "2", ""), "fall time", "≤", "", 0.0, 2.0, Some("LB-1 3.9"),
-            Verdict::NotShown { reason: "LBN-250 has no row for C_ob; get the maximum output capacitance at V_CB = 10 V".into() }, &[]),
-        make("loss", below("Q1", "P", "", "≤", "250", "mW"), "dissipation of Q1", "≤", "mW", 46.31, 250.0, None, met(), &[]),
-        make("base resistor", below("R1", "P", "", "≤", "125", "mW"), "dissipation of R1", "≤", "mW", 39.18, 125.0, None, met(), &[]),
-        make("reverse battery", below("Q1", "V", "CE", "≥", "−0.5", "V"), "collector voltage with the battery reversed", "≥", "V", -0.4999999, -0.5, Some("LB-1 4.1"), assumed(1), &[]),
-        make("brown-out", below("", "V", "bat", "≥", "9", "V"), "least battery voltage at which Q1 still saturates", "≥", "V", 9.4, 9.0, Some("LB-1 4.2"), met(), &[]),
+        make(
+            "saturated",
+            below("", "n", "od", "≥", "1.5", ""),
+            "overdrive of Q1",
+            "≥",
+            "",
+            1.82,
+            1.5,
+            Some("LB-1 3.4"),
+            met(),
+            &["Q1 stays saturated at all corners"],
+        ),
+        make(
+            "cool",
+            below("Q1", "T", "j", "≤", "125", "°C"),
+            "junction temperature of Q1",
+            "≤",
+            "°C",
+            71.43,
+            125.0,
+            Some("LB-1 3.6"),
+            met(),
+            &["an extreme lies inside Q1 gain (at 212)"],
+        ),
+        make(
+            "dark",
+            below("DS1", "I", "", "≤", "1", "mA"),
+            "lamp current when off",
+            "≤",
+            "mA",
+            0.1104,
+            1.0,
+            Some("LB-1 3.7"),
+            met(),
+            &[],
+        ),
+        make(
+            "bright",
+            below("DS1", "V", "", "≥", "10", "V"),
+            "lamp voltage",
+            "≥",
+            "V",
+            10.38,
+            10.0,
+            Some("LB-1 3.3"),
+            assumed(2),
+            &[],
+        ),
+        make(
+            "inrush",
+            below("Q1", "I", "C", "≤", "1", "A"),
+            "collector current at inrush",
+            "≤",
+            "A",
+            1.0437,
+            1.0,
+            Some("LB-1 3.5"),
+            Verdict::NotMet,
+            &["Q1 leaves saturation above 0.92 A"],
+        ),
+        make(
+            "drive",
+            below("PS1", "I", "", "≤", "12", "mA"),
+            "drive current",
+            "≤",
+            "mA",
+            9.126,
+            12.0,
+            Some("drive sheet p. 3"),
+            met(),
+            &[],
+        ),
+        make(
+            "drop",
+            below("Q1", "V", "CE", "≤", "400", "mV"),
+            "voltage across Q1",
+            "≤",
+            "mV",
+            331.2,
+            400.0,
+            None,
+            met(),
+            &[],
+        ),
+        make(
+            "switching edge of the lamp current",
+            below("", "t", "f", "≤", "2", ""),
+            "fall time",
+            "≤",
+            "",
+            0.0,
+            2.0,
+            Some("LB-1 3.9"),
+            Verdict::NotShown {
+                reason: "LBN-250 has no row for C_ob; get the maximum output capacitance at V_CB = 10 V"
+                    .into(),
+            },
+            &[],
+        ),
+        make(
+            "loss",
+            below("Q1", "P", "", "≤", "250", "mW"),
+            "dissipation of Q1",
+            "≤",
+            "mW",
+            46.31,
+            250.0,
+            None,
+            met(),
+            &[],
+        ),
+        make(
+            "base resistor",
+            below("R1", "P", "", "≤", "125", "mW"),
+            "dissipation of R1",
+            "≤",
+            "mW",
+            39.18,
+            125.0,
+            None,
+            met(),
+            &[],
+        ),
+        make(
+            "reverse battery",
+            below("Q1", "V", "CE", "≥", "−0.5", "V"),
+            "collector voltage with the battery reversed",
+            "≥",
+            "V",
+            -0.4999999,
+            -0.5,
+            Some("LB-1 4.1"),
+            assumed(1),
+            &[],
+        ),
+        make(
+            "brown-out",
+            below("", "V", "bat", "≥", "9", "V"),
+            "least battery voltage at which Q1 still saturates",
+            "≥",
+            "V",
+            9.4,
+            9.0,
+            Some("LB-1 4.2"),
+            met(),
+            &[],
+        ),
     ]
 }
 
@@ -216,7 +442,8 @@ fn step(n: usize, label: &str, s: Option<Math>, symbols: Math, numbers: Math, v:
 
 fn derivation() -> Vec<Step> {
     let minus = || operator("−");
-    let base = over(row(vec![symbol("", "V", "drive"), minus(), symbol("Q1", "V", "BE")]), symbol("", "R", "1"));
+    let base =
+        over(row(vec![symbol("", "V", "drive"), minus(), symbol("Q1", "V", "BE")]), symbol("", "R", "1"));
     let base_n = over(row(vec![value("4.60", "V"), minus(), value("0.75", "V")]), value("470", "Ω"));
     let long = |n: bool| {
         let mut parts = Vec::new();
@@ -225,7 +452,8 @@ fn derivation() -> Vec<Step> {
                 parts.push(operator("+"));
             }
             let above = if n { value("12.60", "V") } else { symbol("", "V", "bat") };
-            let below = if n { value(&format!("{}.0", 100 + i), "Ω") } else { symbol("", "R", &format!("{i}")) };
+            let below =
+                if n { value(&format!("{}.0", 100 + i), "Ω") } else { symbol("", "R", &format!("{i}")) };
             parts.push(over(above, below));
         }
         row(parts)
@@ -236,25 +464,91 @@ fn derivation() -> Vec<Step> {
             (symbol("", "I", "2"), None),
         ],
     };
-    let root = |of: Math| Math::Root { radicand: Box::new(Math::Power { base: Box::new(of), exponent: Box::new(value("2", "")) }) };
-    let call = |of: Math| Math::Call { name: "ln".into(), arguments: vec![Math::Group { inner: Box::new(over(of, value("2", ""))) }] };
+    let root = |of: Math| Math::Root {
+        radicand: Box::new(Math::Power { base: Box::new(of), exponent: Box::new(value("2", "")) }),
+    };
+    let call = |of: Math| Math::Call {
+        name: "ln".into(),
+        arguments: vec![Math::Group { inner: Box::new(over(of, value("2", ""))) }],
+    };
     let mut out = vec![
         step(1, "base current", Some(symbol("", "I", "B")), base, base_n, 8.19149, "mA"),
-        step(2, "collector current", Some(symbol("", "I", "C")),
-            over(row(vec![symbol("", "V", "bat"), minus(), symbol("Q1", "V", "CE(sat)")]), symbol("DS1", "R", "")),
-            over(row(vec![value("12.6", "V"), minus(), value("0.12", "V")]), value("120", "Ω")), 104.0, "mA"),
-        step(3, "forced gain", Some(symbol("", "k", "")), over(symbol("", "I", "C"), symbol("", "I", "B")),
-            over(value("104.0", "mA"), value("8.191", "mA")), 12.696, ""),
-        step(4, "least gain needed", Some(symbol("", "β", "need")), row(vec![symbol("", "n", "od"), operator("·"), symbol("", "k", "")]),
-            row(vec![value("1.5", ""), operator("·"), value("12.70", "")]), 19.04, ""),
+        step(
+            2,
+            "collector current",
+            Some(symbol("", "I", "C")),
+            over(
+                row(vec![symbol("", "V", "bat"), minus(), symbol("Q1", "V", "CE(sat)")]),
+                symbol("DS1", "R", ""),
+            ),
+            over(row(vec![value("12.6", "V"), minus(), value("0.12", "V")]), value("120", "Ω")),
+            104.0,
+            "mA",
+        ),
+        step(
+            3,
+            "forced gain",
+            Some(symbol("", "k", "")),
+            over(symbol("", "I", "C"), symbol("", "I", "B")),
+            over(value("104.0", "mA"), value("8.191", "mA")),
+            12.696,
+            "",
+        ),
+        step(
+            4,
+            "least gain needed",
+            Some(symbol("", "β", "need")),
+            row(vec![symbol("", "n", "od"), operator("·"), symbol("", "k", "")]),
+            row(vec![value("1.5", ""), operator("·"), value("12.70", "")]),
+            19.04,
+            "",
+        ),
         step(5, "all branches together", Some(symbol("", "I", "sum")), long(false), long(true), 1.0912, "A"),
-        step(6, "heat of the junction", Some(symbol("Q1", "T", "j")),
-            row(vec![symbol("", "T", "a"), operator("+"), symbol("", "R", "th"), operator("·"), symbol("Q1", "P", "")]),
-            row(vec![value("25", "°C"), operator("+"), value("200", "K/W"), operator("·"), value("24.6", "mW")]), 29.92, "°C"),
-        step(7, "worth a look", Some(symbol("", "x", "")), row(vec![root(symbol("", "V", "bat")), operator("·"), call(symbol("", "α", ""))]), cases, 3.3, ""),
-        step(8, "enough base current", None,
-            row(vec![symbol("", "I", "B"), operator(">"), value("3", ""), operator("·"), over(symbol("", "I", "C"), symbol("", "β", ""))]),
-            row(vec![value("8.191", "mA"), operator(">"), value("1.733", "mA")]), 0.0, ""),
+        step(
+            6,
+            "heat of the junction",
+            Some(symbol("Q1", "T", "j")),
+            row(vec![
+                symbol("", "T", "a"),
+                operator("+"),
+                symbol("", "R", "th"),
+                operator("·"),
+                symbol("Q1", "P", ""),
+            ]),
+            row(vec![
+                value("25", "°C"),
+                operator("+"),
+                value("200", "K/W"),
+                operator("·"),
+                value("24.6", "mW"),
+            ]),
+            29.92,
+            "°C",
+        ),
+        step(
+            7,
+            "worth a look",
+            Some(symbol("", "x", "")),
+            row(vec![root(symbol("", "V", "bat")), operator("·"), call(symbol("", "α", ""))]),
+            cases,
+            3.3,
+            "",
+        ),
+        step(
+            8,
+            "enough base current",
+            None,
+            row(vec![
+                symbol("", "I", "B"),
+                operator(">"),
+                value("3", ""),
+                operator("·"),
+                over(symbol("", "I", "C"), symbol("", "β", "")),
+            ]),
+            row(vec![value("8.191", "mA"), operator(">"), value("1.733", "mA")]),
+            0.0,
+            "",
+        ),
     ];
     if let Some(last) = out.last_mut() {
         last.holds = Some(true);
@@ -266,7 +560,14 @@ fn derivation() -> Vec<Step> {
 fn figures() -> Vec<FigureFinding> {
     let axis = |s: Math, title: &str, u: &str, low: f64, high: f64, logarithmic: bool| {
         let unit = unit(u);
-        AxisFinding { symbol: s, title: title.into(), low: low * unit.factor + unit.offset, high: high * unit.factor + unit.offset, unit, logarithmic }
+        AxisFinding {
+            symbol: s,
+            title: title.into(),
+            low: low * unit.factor + unit.offset,
+            high: high * unit.factor + unit.offset,
+            unit,
+            logarithmic,
+        }
     };
     let curve = |name: &str, style: CurveStyle, f: &dyn Fn(f64) -> Option<f64>, low: f64, high: f64| Curve {
         name: name.into(),
@@ -325,8 +626,16 @@ fn figures() -> Vec<FigureFinding> {
 
 fn results() -> Vec<ResultFinding> {
     let names = [
-        ("I_B", "mA", 8.19), ("I_C", "mA", 104.0), ("k", "", 12.7), ("Q1.V_CE", "V", 0.1231), ("Q1.V_BE", "V", 0.7512), ("Q1.T_j", "°C", 29.9),
-        ("Q1.P", "mW", 24.6), ("R1.P", "mW", 31.5), ("DS1.V", "V", 12.47), ("lamp.V", "V", 0.123),
+        ("I_B", "mA", 8.19),
+        ("I_C", "mA", 104.0),
+        ("k", "", 12.7),
+        ("Q1.V_CE", "V", 0.1231),
+        ("Q1.V_BE", "V", 0.7512),
+        ("Q1.T_j", "°C", 29.9),
+        ("Q1.P", "mW", 24.6),
+        ("R1.P", "mW", 31.5),
+        ("DS1.V", "V", 12.47),
+        ("lamp.V", "V", 0.123),
     ];
     let mut out = Vec::new();
     for condition in ["on", "off", "inrush", "reversed battery"] {
@@ -334,16 +643,37 @@ fn results() -> Vec<ResultFinding> {
             let unit = unit(u);
             let si = |v: f64| v * unit.factor + unit.offset;
             let missing = condition == "reversed battery" && i == 5;
-            let shown = |v: f64| if missing { Shown::NotShown("no thermal resistance for the reverse direction".into()) } else { Shown::Value(si(v)) };
+            let shown = |v: f64| {
+                if missing {
+                    Shown::NotShown("no thermal resistance for the reverse direction".into())
+                } else {
+                    Shown::Value(si(v))
+                }
+            };
             out.push(ResultFinding {
                 symbol: (*name).into(),
                 label: (i % 3 == 0).then(|| "set beside the hand derivation".into()),
                 condition: condition.into(),
                 kind: unit.kind,
                 nominal: shown(*value),
-                min: end(shown(value * 0.84), &[("V_bat", "10.8 V"), ("V_drive", "4.4 V"), ("R1", "493.5 Ω"), ("Q1 gain", "low")], condition, Established::Vertices),
-                max: end(shown(value * 1.21), &[("V_bat", "14.8 V"), ("V_drive", "4.8 V"), ("R1", "446.5 Ω"), ("Q1 V_BE", "low"), ("T_a", "50 °C")], condition,
-                    if i % 4 == 0 { Established::Searched } else { Established::Monotone }),
+                min: end(
+                    shown(value * 0.84),
+                    &[("V_bat", "10.8 V"), ("V_drive", "4.4 V"), ("R1", "493.5 Ω"), ("Q1 gain", "low")],
+                    condition,
+                    Established::Vertices,
+                ),
+                max: end(
+                    shown(value * 1.21),
+                    &[
+                        ("V_bat", "14.8 V"),
+                        ("V_drive", "4.8 V"),
+                        ("R1", "446.5 Ω"),
+                        ("Q1 V_BE", "low"),
+                        ("T_a", "50 °C"),
+                    ],
+                    condition,
+                    if i % 4 == 0 { Established::Searched } else { Established::Monotone },
+                ),
                 unit,
                 flags: if i == 6 { vec!["greatest inside Q1 gain, at 212".into()] } else { vec![] },
             });
@@ -369,12 +699,22 @@ fn points() -> Vec<OperatingFinding> {
     let of = |condition: &str, on: bool| OperatingFinding {
         condition: condition.into(),
         not_shown: None,
-        nodes: pairs(&[("bat", ""), ("base", ""), ("drive", ""), ("lamp", ""), ("sense", ""), ("температура", "")])
-            .into_iter()
-            .enumerate()
-            .map(|(i, (name, _))| (name, if on { 12.6 / (i as f64 + 1.0) } else { 0.1 * i as f64 - 0.2 }))
-            .collect(),
-        transistors: vec![device("Q1", if on { "saturated" } else { "off" }, on), device("Q2", "active", true)],
+        nodes: pairs(&[
+            ("bat", ""),
+            ("base", ""),
+            ("drive", ""),
+            ("lamp", ""),
+            ("sense", ""),
+            ("температура", ""),
+        ])
+        .into_iter()
+        .enumerate()
+        .map(|(i, (name, _))| (name, if on { 12.6 / (i as f64 + 1.0) } else { 0.1 * i as f64 - 0.2 }))
+        .collect(),
+        transistors: vec![
+            device("Q1", if on { "saturated" } else { "off" }, on),
+            device("Q2", "active", true),
+        ],
         elements: vec![
             ("BT1".into(), 12.6, -0.10397, -1.31),
             ("R1".into(), 3.85, 8.19e-3, 0.0315),
@@ -384,7 +724,10 @@ fn points() -> Vec<OperatingFinding> {
         attempts: vec!["direct iteration".into(), "source stepping".into()],
     };
     let failed = OperatingFinding {
-        not_shown: Some("no solution met the current rule: the largest residual was 3 parts in a million at node base".into()),
+        not_shown: Some(
+            "no solution met the current rule: the largest residual was 3 parts in a million at node base"
+                .into(),
+        ),
         nodes: vec![],
         transistors: vec![],
         elements: vec![],
@@ -421,7 +764,14 @@ fn stress() -> Vec<StressLine> {
                 rating: (!missing).then(|| si(rating)),
                 limit: (!missing).then(|| si(rating * 0.8)),
                 ratio: (!missing).then_some(worst / rating),
-                verdict: if missing { "not-shown" } else if bad { "not-met" } else { "met" }.into(),
+                verdict: if missing {
+                    "not-shown"
+                } else if bad {
+                    "not-met"
+                } else {
+                    "met"
+                }
+                .into(),
                 reason: missing.then(|| "the record RX-5 states no working voltage".into()),
                 source: source(Origin::DataSheet, "LBN-250 rev 1 p. 1"),
                 unit,
@@ -432,21 +782,33 @@ fn stress() -> Vec<StressLine> {
 }
 
 fn body() -> Vec<Flow> {
-    let formula = Inline::Formula { math: row(vec![symbol("", "I", "B"), operator(">"), value("5", "mA")]), spoken: "base current greater than five milliampere".into() };
+    let formula = Inline::Formula {
+        math: row(vec![symbol("", "I", "B"), operator(">"), value("5", "mA")]),
+        spoken: "base current greater than five milliampere".into(),
+    };
     vec![
         heading(1, "What the switch does"),
         Flow::Paragraph {
             content: vec![
-                text("The lantern of the light buoy flashes a filament lamp from a battery. A logic output drives "),
+                text(
+                    "The lantern of the light buoy flashes a filament lamp from a battery. A logic output drives ",
+                ),
                 Inline::Emphasis { content: vec![text("one NPN transistor")] },
                 text(" at the low side; the base gets 8.19 mA and the transistor is "),
                 Inline::Strong { content: vec![text("saturated")] },
                 text(", because "),
                 formula,
                 text(" at every corner"),
-                Inline::Footnote { content: vec![paragraph("As printed in the summary; the drive is lowest when the logic supply is low and the output is loaded.")] },
+                Inline::Footnote {
+                    content: vec![paragraph(
+                        "As printed in the summary; the drive is lowest when the logic supply is low and the output is loaded.",
+                    )],
+                },
                 text(". See "),
-                Inline::Link { target: "https://example.org/light-list".into(), content: vec![text("the light list")] },
+                Inline::Link {
+                    target: "https://example.org/light-list".into(),
+                    content: vec![text("the light list")],
+                },
                 text(" for the flash code, and "),
                 Inline::Code { text: "flash --code 'Fl(2)'".into() },
                 text("."),
@@ -456,7 +818,16 @@ fn body() -> Vec<Flow> {
             ordered: None,
             items: vec![
                 vec![paragraph("The cold filament draws nine times the hot current for 80 ms.")],
-                vec![paragraph("The battery may be reversed by whoever services the buoy."), Flow::List { ordered: Some(1), items: vec![vec![paragraph("first by mistake,")], vec![paragraph("then never again.")]] }],
+                vec![
+                    paragraph("The battery may be reversed by whoever services the buoy."),
+                    Flow::List {
+                        ordered: Some(1),
+                        items: vec![
+                            vec![paragraph("first by mistake,")],
+                            vec![paragraph("then never again.")],
+                        ],
+                    },
+                ],
             ],
         },
         heading(3, "Basis"),
@@ -466,7 +837,9 @@ fn body() -> Vec<Flow> {
         paragraph("Лампа включена между батареей и коллектором; база — через R1."),
         placed("circuit", 0),
         heading(1, "Why these values"),
-        paragraph("Each line has one new unknown. Drops and gains are the sheet's bounds at the stated corner, not the solver's results."),
+        paragraph(
+            "Each line has one new unknown. Drops and gains are the sheet's bounds at the stated corner, not the solver's results.",
+        ),
         placed("derivation", 0),
         paragraph("The junction stays cool:"),
         placed("derivation", 1),
@@ -476,16 +849,32 @@ fn body() -> Vec<Flow> {
         heading(2, "What was tried"),
         Flow::Table {
             align: vec![Align::Left, Align::Right, Align::Center],
-            head: vec![vec![text("Base resistor")], vec![text("Base current")], vec![text("Verdict of the bench")]],
+            head: vec![
+                vec![text("Base resistor")],
+                vec![text("Base current")],
+                vec![text("Verdict of the bench")],
+            ],
             rows: vec![
-                vec![vec![text("1 kΩ")], vec![text("3.9 mA")], vec![text("lamp dim after a cold night, transistor hot")]],
-                vec![vec![text("470 Ω")], vec![text("8.2 mA")], vec![Inline::Strong { content: vec![text("kept")] }]],
+                vec![
+                    vec![text("1 kΩ")],
+                    vec![text("3.9 mA")],
+                    vec![text("lamp dim after a cold night, transistor hot")],
+                ],
+                vec![
+                    vec![text("470 Ω")],
+                    vec![text("8.2 mA")],
+                    vec![Inline::Strong { content: vec![text("kept")] }],
+                ],
             ],
         },
         Flow::Quote { content: vec![paragraph("A lamp is a short circuit that thinks better of it.")] },
         Flow::Listing { text: "on:     {normal: yes}\noff:    {normal: yes, V_drive: 0 to 0.4 V}".into() },
         Flow::Rule,
-        Flow::Image { path: "lantern/bench.svg".into(), alt: "The lantern opened on the bench".into(), caption: vec![text("The lantern on the bench.")] },
+        Flow::Image {
+            path: "lantern/bench.svg".into(),
+            alt: "The lantern opened on the bench".into(),
+            caption: vec![text("The lantern on the bench.")],
+        },
         placed("acceptance", 0),
     ]
 }
@@ -493,13 +882,30 @@ fn body() -> Vec<Flow> {
 pub fn findings() -> Findings {
     let resistor = Law::Diode(DiodeLaw {
         nominal: qsheaf::device::diode::Diode {
-            saturation_current: 1e-12, emission_coefficient: 1.0, series_resistance: 0.0, leakage: 0.0, leakage_e_fold: 14.4,
-            breakdown_voltage: 5.1, breakdown_current: 5e-3, breakdown_slope: 0.1, breakdown_coefficient: 0.0, energy_gap: 1.12,
+            saturation_current: 1e-12,
+            emission_coefficient: 1.0,
+            series_resistance: 0.0,
+            leakage: 0.0,
+            leakage_e_fold: 14.4,
+            breakdown_voltage: 5.1,
+            breakdown_current: 5e-3,
+            breakdown_slope: 0.1,
+            breakdown_coefficient: 0.0,
+            energy_gap: 1.12,
             saturation_exponent: 3.0,
         },
-        v_f: [0.0; 2], leakage: [1.0; 2], v_z: [0.0; 2],
+        v_f: [0.0; 2],
+        leakage: [1.0; 2],
+        v_z: [0.0; 2],
     });
-    let residual = |quantity, at: &str, v: [Option<f64>; 3], model| Residual { quantity, at: at.into(), min: v[0], typ: v[1], max: v[2], model };
+    let residual = |quantity, at: &str, v: [Option<f64>; 3], model| Residual {
+        quantity,
+        at: at.into(),
+        min: v[0],
+        typ: v[1],
+        max: v[2],
+        model,
+    };
     Findings {
         schema: SCHEMA,
         program: "0.1.0".into(),
@@ -606,16 +1012,37 @@ pub fn moves() -> Moves {
         program: Some(("0.0.9".into(), "0.1.0".into())),
         files: vec![("parts/lbn-250.yaml".into(), FileMove::Changed)],
         inputs: vec![
-            InputMove { symbol: "V_bat".into(), old: Some("10.8 to 14.4 V".into()), new: Some("10.8 to 14.8 V".into()) },
+            InputMove {
+                symbol: "V_bat".into(),
+                old: Some("10.8 to 14.4 V".into()),
+                new: Some("10.8 to 14.8 V".into()),
+            },
             InputMove { symbol: "Q1 gain".into(), old: None, new: Some("90 to 450".into()) },
         ],
         results: vec![ResultMove {
-            symbol: "Q1.V_CE".into(), condition: "on".into(), end: "maximum".into(), kind: volt.kind, unit: volt.clone(),
-            old: Some(Shown::Value(0.33120001)), new: Some(Shown::Value(0.33120002)),
+            symbol: "Q1.V_CE".into(),
+            condition: "on".into(),
+            end: "maximum".into(),
+            kind: volt.kind,
+            unit: volt.clone(),
+            old: Some(Shown::Value(0.33120001)),
+            new: Some(Shown::Value(0.33120002)),
         }],
         verdicts: vec![
-            VerdictMove { label: "inrush".into(), kind: unit("A").kind, unit: unit("A"), old: Some((Verdict::Met, Shown::Value(0.012))), new: Some((Verdict::NotMet, Shown::Value(-0.0437))) },
-            VerdictMove { label: "cool".into(), kind: Kind::TEMPERATURE, unit: unit("°C"), old: Some((Verdict::Met, Shown::Value(55.1))), new: Some((Verdict::Met, Shown::Value(53.57))) },
+            VerdictMove {
+                label: "inrush".into(),
+                kind: unit("A").kind,
+                unit: unit("A"),
+                old: Some((Verdict::Met, Shown::Value(0.012))),
+                new: Some((Verdict::NotMet, Shown::Value(-0.0437))),
+            },
+            VerdictMove {
+                label: "cool".into(),
+                kind: Kind::TEMPERATURE,
+                unit: unit("°C"),
+                old: Some((Verdict::Met, Shown::Value(55.1))),
+                new: Some((Verdict::Met, Shown::Value(53.57))),
+            },
         ],
         wording: true,
     }
