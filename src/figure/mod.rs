@@ -17,9 +17,9 @@ use plotters::style::{Color, ShapeStyle};
 use crate::study::{AxisFinding, Curve, CurveStyle, FigureFinding};
 
 /// Size of the plotting area and of the borders around it, in points.
-const PLOT: (f64, f64) = (248.0, 164.0);
+const PLOT: (f64, f64) = (240.0, 160.0);
 const LEFT: f64 = 30.0;
-const RIGHT: f64 = 98.0;
+const RIGHT: f64 = 106.0;
 const TOP: f64 = 20.0;
 const BOTTOM: f64 = 32.0;
 /// Where the sample of a curve's line begins and ends, and where its name begins, from the right side of the plot.
@@ -27,8 +27,9 @@ const SAMPLE: (f64, f64) = (5.0, 22.0);
 const NAME: f64 = 26.0;
 /// Units of the canvas per point.
 const SCALE: f64 = 10.0;
-/// Least distance between names at the right border, in points.
-const NAME_STEP: f64 = 10.5;
+/// Letters in one line of a name, and height of a line in points.
+const NAME_LETTERS: usize = 22;
+const NAME_LINE: f64 = 9.5;
 
 /// A figure without lettering, and the lettering with its places in points from the upper left corner.
 #[derive(Clone, PartialEq, Debug)]
@@ -182,15 +183,20 @@ fn stroke(style: CurveStyle) -> (&'static [f64], f64) {
 /// Moves names apart that would overprint, keeping their order, inside the height of the plot where that is possible.
 fn spread_names(names: &mut [(f64, &Curve)]) {
     names.sort_by(|a, b| a.0.total_cmp(&b.0));
+    // Half of the height that a name takes, on either side of its middle.
+    let half = |curve: &Curve| {
+        let lines = curve.name.chars().count().div_ceil(NAME_LETTERS).clamp(1, 4);
+        (lines as f64 * NAME_LINE + 1.0) / 2.0
+    };
     let mut least = f64::NEG_INFINITY;
-    for (at, _) in names.iter_mut() {
-        *at = at.max(least);
-        least = *at + NAME_STEP;
+    for (at, curve) in names.iter_mut() {
+        *at = at.max(least + half(curve));
+        least = *at + half(curve);
     }
-    let mut most = TOP + PLOT.1;
-    for (at, _) in names.iter_mut().rev() {
-        *at = at.min(most);
-        most = *at - NAME_STEP;
+    let mut most = TOP + PLOT.1 + BOTTOM / 2.0;
+    for (at, curve) in names.iter_mut().rev() {
+        *at = at.min(most - half(curve));
+        most = *at - half(curve);
     }
 }
 

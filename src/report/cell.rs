@@ -49,7 +49,7 @@ pub fn significant(value: f64, digits: usize, trim: bool) -> String {
     let scientific = format!("{:.*e}", digits - 1, value);
     let (mantissa, exponent) = scientific.split_once('e').unwrap_or((&scientific, "0"));
     let exponent: i32 = exponent.parse().unwrap_or(0);
-    let plain = if (-4..7).contains(&exponent) {
+    let plain = if (-3..7).contains(&exponent) {
         let decimals = (digits as i32 - 1 - exponent).max(0) as usize;
         let rounded =
             if exponent >= digits as i32 { scientific.parse::<f64>().unwrap_or(value) } else { value };
@@ -160,8 +160,11 @@ fn pad(out: &mut String, digits: usize) {
     out.extend(std::iter::repeat_n(DIGIT_SPACE, digits));
 }
 
-/// Characters before the decimal point, and from the decimal point on.
+/// Characters before the decimal point, and from the decimal point on. A number with a power of ten has its own place.
 fn parts(number: &Number) -> [usize; 2] {
+    if number.digits.contains('×') {
+        return [usize::MAX; 2];
+    }
     let length = number.digits.chars().count();
     let before = number.digits.chars().take_while(|c| *c != '.').count();
     [before, length - before]

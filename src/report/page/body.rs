@@ -224,7 +224,7 @@ fn broken(math: &Math) -> Vec<Value> {
 }
 
 /// Estimated width of a formula in em.
-fn em(math: &Math) -> f64 {
+pub(super) fn em(math: &Math) -> f64 {
     let letters = |text: &str| text.chars().count() as f64 * 0.5;
     match math {
         Math::Row { parts } => parts.iter().map(em).sum(),

@@ -6,6 +6,7 @@ use crate::quantity::Shown;
 use crate::study::{CriterionFinding, Established, Findings, Verdict};
 
 use super::super::cell::{self, DIGITS, Number};
+use super::body::em;
 use super::tables::{quantity_name, stress_lines};
 use super::{corner, rich};
 
@@ -107,6 +108,7 @@ fn criterion(finding: &CriterionFinding, limit: Value, worst: Value, margin: Val
         "verdict": words,
         "reason": reason,
         "math": finding.math,
+        "wide": finding.math.as_ref().is_some_and(|math| em(math) > 13.0),
         "text": rich(&finding.text),
         "spoken": spoken(finding),
         "clause": finding.clause,

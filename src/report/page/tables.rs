@@ -218,9 +218,11 @@ fn point(point: &OperatingFinding, units: &PointUnits) -> Value {
     })
 }
 
-/// A value of an operating point: what is below a millionth of a nano-unit is nothing that a bench can show.
+/// A value of an operating point: four digits, two where it is far below the unit of its column.
 fn fixed(value: f64, unit: &Unit) -> Number {
-    cell::number(if value.abs() < 1e-18 { 0.0 } else { value }, unit, DIGITS, false)
+    let value = if value.abs() < 1e-18 { 0.0 } else { value };
+    let small = ((value - unit.offset) / unit.factor).abs() < 1e-3;
+    cell::number(value, unit, if small { 2 } else { DIGITS }, false)
 }
 
 pub(super) fn tolerance(findings: &Findings) -> Value {
