@@ -83,6 +83,7 @@ pub fn source(
         ident: format!("{} {}", findings.note.organisation, findings.note.note),
         creator: format!("Qsheaf {}", issue.program),
         foreign,
+        images,
     })
 }
 

@@ -6,7 +6,6 @@
 use std::collections::BTreeMap;
 use std::sync::{Arc, LazyLock};
 
-use serde::{Deserialize, Serialize};
 use typst::comemo;
 use typst::diag::{FileError, FileResult, Severity as Grade, SourceDiagnostic};
 use typst::foundations::{Binding, Bytes, Datetime, Duration, Module, Scope, Smart};
@@ -21,7 +20,7 @@ use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::source::Place;
 
 /// Everything that typesetting one note reads: virtual files by path, the first of which is `note.typ`.
-#[derive(Clone, PartialEq, Debug, Default, Serialize, Deserialize)]
+#[derive(Clone, PartialEq, Debug, Default)]
 pub struct Sources {
     pub files: BTreeMap<String, Arc<[u8]>>,
     /// Identifies the document across its issues; its digest becomes the identifier in the PDF.
@@ -31,6 +30,37 @@ pub struct Sources {
     /// Paths of templates that the notebook brought: code that did not ship with the program. Such sources should be
     /// typeset in a process with a time limit, for the typesetter itself has none.
     pub foreign: Vec<String>,
+    /// Paths of the notebook's images, for messages.
+    pub images: Vec<String>,
+}
+
+impl Sources {
+    /// As bytes for another process: the header as one line of JSON with the length of each file, then the files.
+    pub fn to_bytes(&self) -> Vec<u8> {
+        let lengths: Vec<(&String, usize)> =
+            self.files.iter().map(|(path, bytes)| (path, bytes.len())).collect();
+        let header = serde_json::json!([self.ident, self.creator, self.foreign, self.images, lengths]);
+        let mut out = header.to_string().into_bytes();
+        out.push(b'\n');
+        self.files.values().for_each(|bytes| out.extend_from_slice(bytes));
+        out
+    }
+
+    /// Reads what [`Sources::to_bytes`] wrote; `None` where the bytes are something else.
+    pub fn from_bytes(bytes: &[u8]) -> Option<Sources> {
+        type Header = (String, String, Vec<String>, Vec<String>, Vec<(String, usize)>);
+        let end = bytes.iter().position(|byte| *byte == b'\n')?;
+        let (ident, creator, foreign, images, lengths): Header =
+            serde_json::from_slice(&bytes[..end]).ok()?;
+        let mut rest = &bytes[end + 1..];
+        let mut files = BTreeMap::new();
+        for (path, length) in lengths {
+            let (file, after) = rest.split_at_checked(length)?;
+            files.insert(path, file.into());
+            rest = after;
+        }
+        rest.is_empty().then_some(Sources { files, ident, creator, foreign, images })
+    }
 }
 
 /// Library and fonts, made once a process.
@@ -162,7 +192,14 @@ pub fn press(sources: &Sources) -> (Result<Vec<u8>, Diagnostics>, Diagnostics) {
     comemo::evict(0);
     let pdf = pdf.map_err(|errors| {
         let mut out = Diagnostics::default();
-        errors.iter().for_each(|error| out.push(translate(&desk, error)));
+        for error in &errors {
+            let mut found = translate(&desk, error);
+            if error.message.contains("image") && !sources.images.is_empty() {
+                found.expected =
+                    Some(format!("images that can be decoded; the note shows {}", sources.images.join(", ")));
+            }
+            out.push(found);
+        }
         out
     });
     (pdf, warnings)

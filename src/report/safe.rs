@@ -7,8 +7,10 @@ use serde_json::Value;
 
 use super::press::prints;
 
-/// A run of letters without a place to break that is longer than this gets one.
-const LONGEST_RUN: usize = 22;
+/// A word longer than this may be broken, after every so many characters; a path or a name with separators behind them.
+const LONGEST_WORD: usize = 20;
+const LONGEST_NAME: usize = 12;
+const PIECE: usize = 8;
 const BREAK: char = '\u{200b}';
 
 /// Serialises page data. Characters that no embedded font has, private-use, directional and control characters are
@@ -17,29 +19,55 @@ pub(super) fn json_bytes(page: &Value) -> Vec<u8> {
     let text = page.to_string();
     let mut out = String::with_capacity(text.len() + text.len() / 16);
     let mut known: BTreeMap<char, bool> = BTreeMap::new();
-    let mut run = 0;
+    // The word being read, inside a string only: numbers of the JSON itself must stay whole.
+    let mut word = String::new();
+    let mut inside = false;
     let mut chars = text.chars();
     while let Some(c) = chars.next() {
-        if c == '\\' {
-            run += 1;
-            escape(&mut chars, &mut out);
+        if !inside || c == '"' || c == '\\' {
+            flush(&mut word, &mut out);
+            inside ^= c == '"';
+            if c == '\\' {
+                escape(&mut chars, &mut out)
+            } else {
+                out.push(c)
+            }
             continue;
         }
-        if c.is_ascii_graphic() || c == ' ' {
-            out.push(c);
-        } else if *known.entry(c).or_insert_with(|| is_plain(c) && prints(c)) {
-            out.push(c);
-        } else {
+        let printable =
+            c.is_ascii_graphic() || c == ' ' || *known.entry(c).or_insert_with(|| is_plain(c) && prints(c));
+        if !printable {
+            flush(&mut word, &mut out);
             out.push_str(&code_point(u32::from(c)));
-        }
-        run = if c.is_alphanumeric() || "_+=*#/.:@&%".contains(c) { run + 1 } else { 0 };
-        let after_separator = "_/.:=".contains(c) && run > LONGEST_RUN / 2;
-        if run >= LONGEST_RUN || after_separator {
-            out.push(BREAK);
-            run = 0;
+        } else if c.is_alphanumeric() || "_+=*#/.:@&%-".contains(c) {
+            word.push(c);
+        } else {
+            flush(&mut word, &mut out);
+            out.push(c);
         }
     }
+    flush(&mut word, &mut out);
     out.into_bytes()
+}
+
+/// Moves a word to the output, with places to break if it is long.
+fn flush(word: &mut String, out: &mut String) {
+    let length = word.chars().count();
+    if length <= LONGEST_NAME {
+        out.push_str(word);
+    } else {
+        let mut since = 0;
+        for (i, c) in word.chars().enumerate() {
+            out.push(c);
+            since += 1;
+            let separator = "_/:=".contains(c) && since > 2;
+            if i + 1 < length && (separator || (length > LONGEST_WORD && since >= PIECE)) {
+                out.push(BREAK);
+                since = 0;
+            }
+        }
+    }
+    word.clear();
 }
 
 /// Copies an escape of a JSON string, or prints the control character that it stands for.

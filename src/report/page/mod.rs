@@ -44,6 +44,9 @@ pub(crate) fn page(findings: &Findings, issue: &Issue, moves: Option<&Moves>, im
             "program": issue.program,
             "schema": findings.schema,
         },
+        "running": {
+            "number": short(&note.note, 24), "title": short(&note.title, 70), "revision": short(&note.revision, 12),
+        },
         "counts": summary::counts_value(findings),
         "summary": summary::criteria(findings),
         "stresses": summary::stresses(findings),
@@ -156,14 +159,21 @@ fn grouped(hex: &str) -> String {
     out
 }
 
-/// A corner as words: `V_bat 14.8 V`, `Q1 gain low`, apart by commas.
+/// A corner as words: `V_bat 14.8 V`, `Q1 gain low`, apart by commas; a level stays with its symbol on one line.
 fn corner(corner: &[(String, String)]) -> Value {
-    let text = corner
-        .iter()
-        .map(|(symbol, level)| format!("{symbol}\u{a0}{}", level.replace(' ', "\u{a0}")))
-        .collect::<Vec<_>>()
-        .join(", ");
-    rich(&text)
+    let level = |(symbol, level): &(String, String)| {
+        let text = format!("{symbol} {level}");
+        if text.chars().count() <= 20 { text.replace(' ', "\u{a0}") } else { text }
+    };
+    rich(&corner.iter().map(level).collect::<Vec<_>>().join(", "))
+}
+
+/// At most `most` characters, the rest told by dots: for the running head only.
+fn short(text: &str, most: usize) -> String {
+    if text.chars().count() <= most {
+        return text.to_owned();
+    }
+    text.chars().take(most.saturating_sub(1)).chain(['…']).collect()
 }
 
 fn shown(value: &Shown, unit: &Unit) -> Option<Number> {

@@ -108,7 +108,7 @@ fn criterion(finding: &CriterionFinding, limit: Value, worst: Value, margin: Val
         "verdict": words,
         "reason": reason,
         "math": finding.math,
-        "wide": finding.math.as_ref().is_some_and(|math| em(math) > 13.0),
+        "wide": is_wide(finding),
         "text": rich(&finding.text),
         "spoken": spoken(finding),
         "clause": finding.clause,
@@ -121,6 +121,11 @@ fn criterion(finding: &CriterionFinding, limit: Value, worst: Value, margin: Val
         "how": established(finding.worst.established),
         "flags": finding.flags.iter().map(|flag| rich(flag)).collect::<Vec<_>>(),
     })
+}
+
+/// Whether the demand is too wide to be kept on one line of a table's column.
+pub(super) fn is_wide(finding: &CriterionFinding) -> bool {
+    finding.math.as_ref().is_some_and(|math| em(math) > 12.0)
 }
 
 /// What is read aloud for the criterion; never empty.

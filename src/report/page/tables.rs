@@ -12,7 +12,7 @@ use crate::stress::StressLine;
 use crate::study::{Findings, Input, OperatingFinding, ResultFinding, Verdict};
 
 use super::super::cell::{self, DIGITS, Number};
-use super::summary::{established, ordered, spoken, verdict};
+use super::summary::{established, is_wide, ordered, spoken, verdict};
 use super::{corner, plain, rich, shown, symbol};
 
 /// Design basis: groups of inputs, each with its source and a mark where the source is weak.
@@ -128,6 +128,7 @@ pub(super) fn acceptance(findings: &Findings) -> Value {
         json!({
             "label": criterion.label,
             "math": criterion.math,
+            "wide": is_wide(criterion),
             "text": rich(&criterion.text),
             "spoken": spoken(criterion),
             "over": criterion.over,

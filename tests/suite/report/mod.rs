@@ -382,3 +382,21 @@ fn weak_sources_are_marked_where_they_are_used() {
     let squeezed = pdf.all_text().replace(' ', "");
     assert_eq!(squeezed.matches("†assumption,nosourcegiven").count(), 1);
 }
+
+#[test]
+fn sources_travel_to_another_process() {
+    let sources = sources(&findings(), &files());
+    let bytes = sources.to_bytes();
+    assert_eq!(Sources::from_bytes(&bytes), Some(sources));
+    assert_eq!(Sources::from_bytes(&bytes[..bytes.len() - 1]), None);
+    assert_eq!(Sources::from_bytes(b"[1]\n"), None);
+}
+
+#[test]
+fn an_image_that_cannot_be_decoded_is_named() {
+    let mut bundle = files();
+    bundle.insert(File::new("lantern/bench.svg", b"not an image".to_vec()));
+    let errors = typeset(&findings(), &issue(), None, &bundle).expect_err("an error");
+    let expected = errors.0[0].expected.clone().unwrap_or_default();
+    assert!(expected.contains("lantern/bench.svg"), "{errors:#?}");
+}
