@@ -18,3 +18,6 @@ pub mod spread;
 pub mod stress;
 pub mod caution;
 pub mod study;
+pub mod redline;
+pub mod figure;
+pub mod report;

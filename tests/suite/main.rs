@@ -3,6 +3,7 @@
 mod circuit;
 mod formula;
 mod quantity;
+mod report;
 mod solve;
 mod worksheet;
 mod yaml;
