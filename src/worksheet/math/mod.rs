@@ -1,6 +1,8 @@
 //! `$...$` in prose: mathematics as authors write it, either plainly (`V_CE(sat) <= 0.3 V`) or with the usual backslash
 //! commands (`\frac{V_{CC}}{R_C}`), read into the tree that the templates set, with a reading aloud.
 
+mod spoken;
+
 use std::ops::Range;
 
 use crate::diagnostic::nearest;
@@ -128,9 +130,9 @@ pub(super) fn read(text: &str) -> Result<(Math, String), Box<Fault>> {
     if depth(&row) > DEEPEST {
         return Err(fault(0..text.len(), "the formula is nested too deep", "a simpler formula"));
     }
-    let mut spoken = String::new();
-    speak(&row, &mut spoken);
-    Ok((row, spoken.split_whitespace().collect::<Vec<_>>().join(" ")))
+    let mut words = String::new();
+    spoken::speak(&row, &mut words);
+    Ok((row, words.split_whitespace().collect::<Vec<_>>().join(" ")))
 }
 
 fn fault(range: Range<usize>, message: &str, expected: &str) -> Box<Fault> {
@@ -481,68 +483,5 @@ fn depth(math: &Math) -> usize {
         }
         Math::Root { radicand: inner } | Math::Group { inner } | Math::Absolute { inner } => depth(inner),
         Math::Symbol { .. } | Math::Number { .. } | Math::Operator { .. } | Math::Cases { .. } => 0,
-    }
-}
-
-/// The formula read aloud. Depth is bounded by the reader.
-fn speak(math: &Math, out: &mut String) {
-    match math {
-        Math::Row { parts } => parts.iter().for_each(|part| speak(part, out)),
-        Math::Symbol { base, subscript, owner } => {
-            out.push_str(&format!(" {base} {subscript}"));
-            if !owner.is_empty() {
-                out.push_str(&format!(" of {owner}"));
-            }
-        }
-        Math::Number { digits, unit, .. } => out.push_str(&format!(" {digits} {unit}")),
-        Math::Operator { sign } => {
-            let named = SIGNS.iter().find(|(_, shown, _)| shown == sign).map(|(.., words)| *words);
-            let plain = || PLAIN.iter().find(|(c, _)| sign.starts_with(*c)).map(|(_, words)| *words);
-            out.push_str(&format!(" {} ", named.or_else(plain).unwrap_or(sign)));
-        }
-        Math::Fraction { above, below } => {
-            speak(above, out);
-            out.push_str(" over ");
-            speak(below, out);
-        }
-        Math::Power { base, exponent } => {
-            speak(base, out);
-            out.push_str(" to the power ");
-            speak(exponent, out);
-        }
-        Math::Root { radicand } => {
-            out.push_str(" the square root of ");
-            speak(radicand, out);
-        }
-        Math::Group { inner } => {
-            out.push_str(" open bracket ");
-            speak(inner, out);
-            out.push_str(" close bracket ");
-        }
-        Math::Absolute { inner } => {
-            out.push_str(" the magnitude of ");
-            speak(inner, out);
-        }
-        Math::Call { name, arguments } => {
-            out.push_str(&format!(" {name} of "));
-            for (index, argument) in arguments.iter().enumerate() {
-                if index > 0 {
-                    out.push_str(" and ");
-                }
-                speak(argument, out);
-            }
-        }
-        Math::Cases { branches } => {
-            for (value, condition) in branches {
-                speak(value, out);
-                match condition {
-                    Some(condition) => {
-                        out.push_str(" if ");
-                        speak(condition, out);
-                    }
-                    None => out.push_str(" otherwise "),
-                }
-            }
-        }
     }
 }
