@@ -6,6 +6,7 @@ mod conditions;
 mod derivation;
 mod fence;
 mod figure;
+mod flow;
 mod head;
 mod lines;
 mod math;
@@ -17,6 +18,7 @@ mod records;
 
 pub use basis::origin;
 pub use fence::WORDS;
+pub use flow::flow;
 pub use read::read;
 
 use crate::diagnostic::Diagnostics;
