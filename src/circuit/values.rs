@@ -3,7 +3,7 @@
 use std::collections::BTreeMap;
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
-use crate::formula::{self, Expr, Formula};
+use crate::formula::{Expr, Formula};
 use crate::quantity::{self, Dimension, Kind, Origin, Quantity, Source, Sourced, Spread};
 use crate::source::Place;
 use crate::worksheet::{Spot, origin};
@@ -61,7 +61,7 @@ impl Reader<'_> {
         match quantity::parse(&text.value, &text.place) {
             Ok(quantity) => self.in_place(quantity, text, symbol, wanted),
             // `2 * R_1` begins with a number too.
-            Err(found) => match formula::parse(&text.value, &text.place) {
+            Err(found) => match crate::formula::Formula::parse(&text.value, &text.place) {
                 Ok(formula) if has_names(&formula.expr) => self.checked(formula, wanted),
                 _ => {
                     self.diagnostics.push(found);
@@ -182,7 +182,7 @@ impl Reader<'_> {
     }
 
     fn formula(&mut self, text: &Spot<String>, wanted: Wanted) -> Option<Formula> {
-        match formula::parse(&text.value, &text.place) {
+        match crate::formula::Formula::parse(&text.value, &text.place) {
             Ok(formula) => self.checked(formula, wanted),
             Err(found) => {
                 self.diagnostics.extend(found);
@@ -209,7 +209,8 @@ impl Reader<'_> {
         if !right {
             return None;
         }
-        match formula::kind(&formula.expr, &|name| self.basis.get(name).copied()) {
+        let kind = |name: &str| self.basis.get(name).copied();
+        match formula.kind(&kind, &mut self.basis.keys().map(String::as_str)) {
             Ok(kind) if kind == wanted.kind => Some(formula),
             Ok(kind) => {
                 let message = format!("`{}` comes to {}", formula.text, kind.dimension);
@@ -217,7 +218,7 @@ impl Reader<'_> {
                 None
             }
             Err(found) => {
-                self.diagnostics.push(found);
+                self.diagnostics.extend(found);
                 None
             }
         }

@@ -1,7 +1,7 @@
 //! `figure` blocks: plot / against / over / corners / in / title.
 
 use crate::diagnostic::{Diagnostic, Diagnostics, nearest};
-use crate::formula::{self, Formula};
+use crate::formula::Formula;
 use crate::quantity;
 use crate::yaml::{self, Node};
 
@@ -128,7 +128,7 @@ fn sweep(
     }
     let mut formulas: Vec<Formula> = Vec::new();
     for plot in plots {
-        match formula::parse(&plot.value, &plot.place) {
+        match crate::formula::Formula::parse(&plot.value, &plot.place) {
             Ok(formula) => formulas.push(formula),
             Err(found) => diagnostics.extend(found),
         }

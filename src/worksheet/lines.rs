@@ -3,7 +3,7 @@
 use std::ops::Range;
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
-use crate::formula::{self, Expr, Formula, Relation};
+use crate::formula::{Expr, Formula, Relation};
 use crate::source::Place;
 
 use super::Spot;
@@ -101,8 +101,8 @@ impl Line<'_> {
     pub fn formula(&self, range: Range<usize>) -> Result<Formula, Diagnostics> {
         let place = self.flat(range.clone());
         let text = self.text.get(range.clone()).unwrap_or("");
-        let mut formula =
-            formula::parse(text, &place).map_err(|found| self.true_places(found, range.start))?;
+        let mut formula = crate::formula::Formula::parse(text, &place)
+            .map_err(|found| self.true_places(found, range.start))?;
         self.true_expr(&mut formula.expr, range.start);
         formula.place = self.place(range);
         Ok(formula)
@@ -112,8 +112,8 @@ impl Line<'_> {
     pub fn relation(&self, range: Range<usize>) -> Result<Relation, Diagnostics> {
         let place = self.flat(range.clone());
         let text = self.text.get(range.clone()).unwrap_or("");
-        let mut relation =
-            formula::parse_relation(text, &place).map_err(|found| self.true_places(found, range.start))?;
+        let mut relation = crate::formula::Relation::parse(text, &place)
+            .map_err(|found| self.true_places(found, range.start))?;
         self.true_relation(&mut relation, range.start);
         Ok(relation)
     }

@@ -1,4 +1,8 @@
 //! Every test of the project, in one binary.
+
 mod circuit;
+mod formula;
+mod quantity;
+mod solve;
 mod worksheet;
 mod yaml;

@@ -27,7 +27,7 @@ fn scalars_stay_as_typed_and_know_their_place() {
     assert_eq!(entries[0].1.place.to_string(), "sheet.md:10:8");
     let record = &entries[1].1;
     assert_eq!(record.get("resistor").unwrap().scalar("").unwrap(), "4k7 ± 1 %");
-    assert_eq!(record.get("to").unwrap().place.to_string(), "sheet.md:11:30");
+    assert_eq!(record.get("to").unwrap().place.to_string(), "sheet.md:11:31");
     for text in ["1e3", "1.50", "0", "~", "no", "0x10"] {
         assert_eq!(read(&format!("a: {text}")).unwrap().get("a").unwrap().scalar("").unwrap(), text);
     }
@@ -38,8 +38,8 @@ fn whatever_hides_meaning_is_refused_with_its_place() {
     for (text, expected) in [
         ("a: 1\nb: 2\na: 3\n", "sheet.md:12:1: `a` stands twice"),
         ("a: 4 V #4\n", "sheet.md:10:8: everything from ` #` on would be ignored silently"),
-        ("a: &x 4\n", "sheet.md:10:7: an anchor (`&name`) is not allowed here"),
-        ("a: !!int 4\n", "sheet.md:10:10: a tag (`!name`) is not allowed here"),
+        ("a: &x 4\n", "sheet.md:10:4: an anchor (`&name`) is not allowed here"),
+        ("a: !!int 4\n", "sheet.md:10:4: a tag (`!name`) is not allowed here"),
         ("a: 1\n---\nb: 2\n", "sheet.md:11:1: a second YAML document begins here"),
     ] {
         let found = read(text).unwrap_err();
@@ -71,7 +71,7 @@ fn malformed_text_is_an_error_and_never_a_panic() {
         let bytes: Vec<u8> = (0..60)
             .map(|_| {
                 seed = seed.wrapping_mul(6364136223846793005).wrapping_add(1442695040888963407);
-                b" {}[]:,-#&*!|>'\"%@`\nab1\t"[(seed >> 33) as usize % 25]
+                b" {}[]:,-#&*!|>'\"%@`\nab1\t"[(seed >> 33) as usize % 24]
             })
             .collect();
         let _ = read(std::str::from_utf8(&bytes).unwrap());
