@@ -6,7 +6,9 @@ mod spoken;
 use std::ops::Range;
 
 use crate::diagnostic::nearest;
+use crate::formula;
 use crate::markup::Math;
+use crate::quantity;
 
 /// The deepest nesting of a formula, and its greatest length in bytes.
 const DEEPEST: usize = 24;
@@ -107,9 +109,6 @@ const PLAIN: [(char, &str); 14] = [
 const FUNCTIONS: [&str; 12] =
     ["ln", "log", "exp", "sin", "cos", "tan", "arctan", "min", "max", "log10", "atan", "lim"];
 const SPACES: [&str; 8] = ["\\left", "\\right", "\\quad", "\\,", "\\;", "\\:", "\\!", "\\ "];
-/// Units that are set upright after a number.
-const UNITS: [&str; 12] = ["V", "A", "Ω", "S", "W", "F", "H", "s", "Hz", "K", "J", "C"];
-
 /// Reads a formula.
 ///
 /// # Errors
@@ -330,7 +329,10 @@ impl<'a> Reader<'a> {
         let word = spaced[..word_end].trim_end_matches('/');
         // A letter that goes on as `V_CC` or `V(t)` is a symbol, not a unit.
         let goes_on = spaced[word.len()..].starts_with(['_', '(', '{', '.', '^']);
-        let is_unit = word.split('/').all(is_unit) && !goes_on && (word == "%" || after.len() > spaced.len());
+        let is_unit = !word.is_empty()
+            && quantity::parse_unit(word).is_some()
+            && !goes_on
+            && (word == "%" || after.len() > spaced.len());
         if !is_unit {
             return Math::Number { digits, exponent: None, unit: String::new() };
         }
@@ -437,6 +439,11 @@ impl<'a> Reader<'a> {
                 self.at += word.len() + 2;
             }
         }
+        if !owner.is_empty() {
+            // Results of the circuit are set as everywhere else in the note.
+            let name = if subscript.is_empty() { base } else { format!("{base}_{subscript}") };
+            return Ok(formula::symbol(&format!("{owner}.{name}")));
+        }
         Ok(Math::Symbol { base, subscript, owner })
     }
 }
@@ -455,15 +462,6 @@ fn unknown_command(name: &str, whole: &str, start: usize) -> Box<Fault> {
         expected: "a Greek letter, a sign, \\frac, \\sqrt, \\text or a function".into(),
         nearest: nearest(name, known).map(|name| format!("\\{name}")),
     })
-}
-
-fn is_unit(word: &str) -> bool {
-    let prefixed = |unit: &str| {
-        word.strip_suffix(unit).is_some_and(|prefix| {
-            prefix.is_empty() || ["p", "n", "u", "µ", "μ", "m", "k", "M", "G"].contains(&prefix)
-        })
-    };
-    matches!(word, "%" | "°C" | "ppm" | "dB" | "rad" | "h" | "min") || UNITS.into_iter().any(prefixed)
 }
 
 fn ungrouped(math: Math) -> Math {

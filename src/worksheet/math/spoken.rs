@@ -9,7 +9,11 @@ pub(super) fn speak(math: &Math, out: &mut String) {
     match math {
         Math::Row { parts } => parts.iter().for_each(|part| speak(part, out)),
         Math::Symbol { base, subscript, owner } => {
-            out.push_str(&format!(" {base} {subscript}"));
+            out.push_str(&format!(" {base}"));
+            if !subscript.is_empty() && !base.is_empty() {
+                out.push_str(" sub");
+            }
+            out.push_str(&format!(" {subscript}"));
             if !owner.is_empty() {
                 out.push_str(&format!(" of {owner}"));
             }
