@@ -34,7 +34,7 @@ fn the_four_regions() {
             (3.0, 10.0, Region::Saturated),
             (10.0, 10.0, Region::Saturated),
             (5.0, 0.0, Region::Saturated),
-            (-3.0, -10.0, Region::Off),
+            (-3.0, -2.0, Region::Off),
         ] {
             let (branch, point) = stage(full_model, pnp, drive, supply);
             assert_eq!(region(&branch, &point), Some(expected), "{drive} V, {supply} V");
@@ -54,7 +54,9 @@ fn margins_agree_with_regions_and_are_continuous() {
             let drive = -1.0 + 5.0 * f64::from(k) / 1200.0;
             let (branch, point) = stage(full_model, pnp, drive, 10.0);
             let is = region(&branch, &point).expect("a transistor");
-            let margins = ALL.map(|region| margin(region, &branch, &point).expect("a margin"));
+            let margins = ALL.map(|region| {
+                margin(region, &branch, &point).unwrap_or_else(|| panic!("{drive} V: {point:?}"))
+            });
             for (region, margin) in ALL.iter().zip(margins) {
                 assert_eq!(*region == is, margin > 0.0, "{region:?} by {margin}, but {is:?} at {drive} V");
             }
@@ -91,6 +93,7 @@ fn overdrive_by_hand() {
 /// V_CB = 0, the edge of quasi-saturation, is still active; V_CE about 0.2 V at some collector current is the edge.
 #[test]
 fn the_edge_of_saturation_is_where_textbooks_put_it() {
+    // Diode connected: V_CB is zero.
     let mut net = Net::default();
     net.supply(1, 0, 10.0);
     net.resistor(1, 2, 1e3);
@@ -98,8 +101,14 @@ fn the_edge_of_saturation_is_where_textbooks_put_it() {
     let point = net.solve(298.15).expect("solves");
     let at = &point.elements[q];
     assert_eq!(region(&net.branches[q], at), Some(Region::Active));
-    let edge = at.v - margin(Region::Active, &net.branches[q], at).expect("margin");
-    assert!((0.1..0.3).contains(&edge), "{edge}");
+    // A hundredth of the base current in the collector junction: V_CE = V_T ln((1 + (k + 1) / beta_R) / (1 - k / beta_F))
+    // with k = beta_F / 1.01 (Ebers and Moll 1954).
+    let (branch, low) = stage(false, false, 1.05, 2.0);
+    let edge = low.v - margin(Region::Active, &branch, &low).expect("margin");
+    let k = 200.0 / EDGE_OF_SATURATION;
+    let expected = 0.025_692_6 * ((1.0 + (k + 1.0) / 4.0) / (1.0 - k / 200.0)).ln();
+    assert!((edge - expected).abs() < 1e-4, "{edge} V instead of {expected} V");
+    assert!((0.2..0.25).contains(&edge));
     // h_FE of a real one at zero V_CB: what the device equations give there.
     assert!((overdrive(&net.branches[q], at).expect("overdrive") - 1.0).abs() < 1e-9);
 }
