@@ -100,7 +100,7 @@ fn check(net: &Net, point: &OperatingPoint, seed: u64) {
         let by_nodes: f64 = net.elements[element]
             .terminals
             .iter()
-            .zip(net.into_terminals(point, element))
+            .zip(net.terminal_currents(point, element))
             .map(|(&node, current)| point.voltages[node] * current)
             .sum();
         sum += by_nodes;
