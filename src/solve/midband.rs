@@ -122,6 +122,7 @@ impl Plan {
                 }
             }
         }
+        scratch.right.fill(0.0);
         self.eliminate(scratch)
     }
 }

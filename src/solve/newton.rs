@@ -261,7 +261,7 @@ impl Plan {
 
     /// Newton's method from the state in `scratch`; the estimated error of any voltage when it is accepted.
     fn newton(&self, scratch: &mut Scratch, stage: Stage) -> Result<f64, Failure> {
-        let (n, m) = (self.unknowns(), self.ports);
+        let n = self.unknowns();
         let mut moved = f64::INFINITY;
         for _ in 0..stage.steps {
             self.evaluate(scratch, stage.sources, stage.conductance);
@@ -310,7 +310,6 @@ impl Plan {
                     scratch.low[port + j] = if allowed == to { (from - to) + step } else { 0.0 };
                 }
             }
-            debug_assert!(scratch.u.len() == m);
             if !moved.is_finite() {
                 return Err(Failure::NotConverged { residual: f64::INFINITY });
             }
@@ -359,59 +358,31 @@ impl Plan {
         let (n, m) = (self.unknowns(), self.ports);
         let Scratch { elimination, right, step, jacobian, small, slopes, .. } = scratch;
         elimination.reduce(right);
-        small.clear();
-        jacobian.clear();
-        for &row in &elimination.left {
-            small.push(right[row]);
-            for j in 0..m {
-                jacobian.push(elimination.at(row, n + j));
-            }
-        }
         for (r, &row) in elimination.left.iter().enumerate() {
+            small[r] = right[row];
             let line = &mut jacobian[r * m..][..m];
-            self.each_port(|j, partner| {
-                line[j] += elimination.at(row, n + m + j) * slopes[2 * j];
-                if let Some(other) = partner {
-                    line[other] += elimination.at(row, n + m + j) * slopes[2 * j + 1];
-                }
-            });
+            let (by_voltage, by_current) = elimination.rest[2 * r * m..][..2 * m].split_at(m);
+            line.copy_from_slice(by_voltage);
+            for (j, &partner) in self.partners.iter().enumerate() {
+                line[j] += by_current[j] * slopes[2 * j];
+                line[partner] += by_current[j] * slopes[2 * j + 1];
+            }
         }
         solve_small(jacobian, small)?;
         step[n..n + m].copy_from_slice(small);
-        self.each_port(|j, partner| {
-            let other = partner.map_or(0.0, |other| slopes[2 * j + 1] * small[other]);
-            step[n + m + j] = slopes[2 * j] * small[j] + other;
-        });
+        for (j, &partner) in self.partners.iter().enumerate() {
+            step[n + m + j] = slopes[2 * j] * small[j] + slopes[2 * j + 1] * small[partner];
+        }
         elimination.substitute(right, step);
         Ok(())
-    }
-
-    /// Calls `f` with each junction and, for a transistor, the other one.
-    fn each_port(&self, mut f: impl FnMut(usize, Option<usize>)) {
-        for slot in &self.slots {
-            match *slot {
-                Slot::Two { .. } => {}
-                Slot::Diode { port, .. } => f(port, None),
-                Slot::Transistor { port, .. } => {
-                    f(port, Some(port + 1));
-                    f(port + 1, Some(port));
-                }
-            }
-        }
     }
 
     /// All equations at the state in `scratch`, from the device laws: residuals, the size of their largest terms, the
     /// sum of currents out of each node, junction currents and their slopes.
     pub(super) fn evaluate(&self, scratch: &mut Scratch, sources: f64, conductance: f64) {
-        let (n, m, rows) = (self.unknowns(), self.ports, self.unknowns() + self.ports);
-        fill(&mut scratch.residual, rows);
-        fill(&mut scratch.largest, rows);
-        fill(&mut scratch.right, rows);
-        fill(&mut scratch.step, n + 2 * m);
-        fill(&mut scratch.node_sum, self.nodes);
-        fill(&mut scratch.node_largest, self.nodes);
-        scratch.i.resize(m, 0.0);
-        scratch.slopes.resize(2 * m, 0.0);
+        let n = self.unknowns();
+        scratch.node_sum.fill(0.0);
+        scratch.node_largest.fill(0.0);
         let Scratch {
             residual, largest, node_sum, node_largest, y, u, low, i, slopes, prepared, laws, ..
         } = scratch;
@@ -447,6 +418,7 @@ impl Plan {
                         _ => (0.0, 0.0),
                     };
                     slopes[2 * port] = slope + conductance;
+                    slopes[2 * port + 1] = 0.0;
                     i[port] = flow + conductance * u[port] + slopes[2 * port] * low[port];
                     out_of(anode, i[port]);
                     out_of(cathode, -i[port]);
@@ -487,6 +459,24 @@ impl Plan {
         }
         residual[..self.nodes - 1].copy_from_slice(&node_sum[1..]);
         largest[..self.nodes - 1].copy_from_slice(&node_largest[1..]);
+    }
+}
+
+/// Storage for networks of this size, all zero.
+pub(super) fn size(plan: &Plan, scratch: &mut Scratch) {
+    let (n, m, rows) = (plan.unknowns(), plan.ports, plan.unknowns() + plan.ports);
+    if scratch.sized != (plan.nodes, n, m) {
+        fill(&mut scratch.residual, rows);
+        fill(&mut scratch.largest, rows);
+        fill(&mut scratch.right, rows);
+        fill(&mut scratch.step, n + 2 * m);
+        fill(&mut scratch.node_sum, plan.nodes);
+        fill(&mut scratch.node_largest, plan.nodes);
+        fill(&mut scratch.i, m);
+        fill(&mut scratch.slopes, 2 * m);
+        fill(&mut scratch.jacobian, m * m);
+        fill(&mut scratch.small, m);
+        scratch.sized = (plan.nodes, n, m);
     }
 }
 
