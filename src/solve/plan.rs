@@ -8,8 +8,9 @@
 //! Unknowns: y = currents of two-terminal elements, then node voltages; u = junction voltages. Equations: the current
 //! rule at each node but ground, the law of each two-terminal element, one voltage equation a junction.
 
+use super::junction::Device;
 use super::linear::Elimination;
-use super::newton::{Device, size};
+use super::newton::size;
 use super::{Branch, ElementPoint, Failure, OperatingPoint, Solution};
 use crate::circuit::{ElementKind, Network, Node};
 

@@ -140,7 +140,7 @@ impl Bias {
             let (forced, at_edge) = gain_at(&self.at, i_c, u_bc, near)?;
             near = at_edge;
             let off = libm::log((gain / forced - 1.0).max(1e-12)) - target;
-            if off.abs() < 1e-9 || high - low < 1e-12 {
+            if off.abs() < 1e-7 || high - low < 1e-12 {
                 let p = &self.at.parameters;
                 let i_b = i_c / forced;
                 let drops = p.collector_resistance * i_c + p.emitter_resistance * (i_c + i_b);
@@ -200,7 +200,7 @@ fn gain_at(at: &transistor::AtTemperature, i_c: f64, u_bc: f64, near: f64) -> Op
         if !step.is_finite() {
             return None;
         }
-        if step.abs() < 1e-13 {
+        if step.abs() < 1e-10 {
             let gain = now.i_c / now.i_b;
             return (now.i_b > 0.0 && gain.is_finite()).then_some((gain, u_be));
         }
