@@ -103,7 +103,7 @@ fn entry(
     diagnostics: &mut Diagnostics,
 ) -> Option<(Sourced, Option<String>)> {
     let Value::Map(entries) = &node.value else {
-        return plain_entry(&scalar(page, node, EXAMPLE, diagnostics)?, clauses, diagnostics);
+        return basis_text(&scalar(page, node, EXAMPLE, diagnostics)?, clauses, diagnostics);
     };
     if refuse_loose_words(entries, diagnostics) {
         return None;
@@ -132,8 +132,9 @@ fn entry(
     Some((Sourced { quantity, source, place: value.place }, about))
 }
 
-/// `quantity -- what it is [where it comes from]`
-fn plain_entry(
+/// Reads the text of a basis value, `quantity -- what it is [where it comes from]`: the quantity with its source, and what
+/// it is.
+pub fn basis_text(
     text: &Spot<String>,
     clauses: &[&str],
     diagnostics: &mut Diagnostics,
