@@ -16,7 +16,7 @@ mod read;
 pub mod recall;
 mod records;
 
-pub use basis::{quantity_as, source_of};
+pub use basis::{basis_text, quantity_as, source_of};
 pub use fence::WORDS;
 pub use flow::flow;
 pub use read::read;
