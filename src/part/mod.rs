@@ -1,8 +1,12 @@
 //! Part records: what a data sheet gives, row by row, each with its source. Letter symbols follow IEC 60747.
 
+mod read;
+
+pub use read::read;
+
 use serde::{Deserialize, Serialize};
 
-use crate::quantity::Source;
+use crate::quantity::{Dimension, Kind, Source};
 use crate::source::{Digest, Place};
 
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug, Serialize, Deserialize)]
@@ -27,6 +31,8 @@ pub struct Part {
     pub description: String,
     pub rows: Vec<Row>,
     pub ratings: Vec<Rating>,
+    /// Thermal impedance of single pulses.
+    pub pulses: Vec<Pulse>,
     /// Record file and its digest.
     pub digest: Digest,
     pub place: Place,
@@ -161,6 +167,180 @@ pub struct Rating {
     pub up_to: Option<f64>,
     pub source: Source,
     pub place: Place,
+}
+
+/// Thermal impedance junction to ambient for a single pulse.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct Pulse {
+    /// Length of the pulse (s).
+    pub lasts: f64,
+    /// Z_th(j-a) at its end (K/W).
+    pub impedance: f64,
+    pub source: Source,
+    pub place: Place,
+}
+
+impl PartKind {
+    /// Transistors and diodes, whose model is fitted from the rows.
+    pub fn is_junction_device(self) -> bool {
+        matches!(self, PartKind::Npn | PartKind::Pnp | PartKind::Diode | PartKind::Zener)
+    }
+}
+
+impl RowQuantity {
+    pub const ALL: [RowQuantity; 20] = [
+        RowQuantity::CurrentGain,
+        RowQuantity::BaseEmitterVoltage,
+        RowQuantity::BaseEmitterSaturation,
+        RowQuantity::CollectorEmitterSaturation,
+        RowQuantity::CollectorCutoff,
+        RowQuantity::OutputConductance,
+        RowQuantity::ForwardVoltage,
+        RowQuantity::ReverseCurrent,
+        RowQuantity::ZenerVoltage,
+        RowQuantity::ZenerResistance,
+        RowQuantity::ZenerTemperatureCoefficient,
+        RowQuantity::BaseEmitterTemperatureCoefficient,
+        RowQuantity::ResistanceCoefficient,
+        RowQuantity::Tolerance,
+        RowQuantity::ColdResistance,
+        RowQuantity::Resistance,
+        RowQuantity::Inductance,
+        RowQuantity::OutputCapacitance,
+        RowQuantity::InputCapacitance,
+        RowQuantity::TransitionFrequency,
+    ];
+
+    /// The letter symbol, as a record writes it.
+    pub fn symbol(self) -> &'static str {
+        match self {
+            RowQuantity::CurrentGain => "h_FE",
+            RowQuantity::BaseEmitterVoltage => "V_BE",
+            RowQuantity::BaseEmitterSaturation => "V_BE(sat)",
+            RowQuantity::CollectorEmitterSaturation => "V_CE(sat)",
+            RowQuantity::CollectorCutoff => "I_CBO",
+            RowQuantity::OutputConductance => "h_oe",
+            RowQuantity::ForwardVoltage => "V_F",
+            RowQuantity::ReverseCurrent => "I_R",
+            RowQuantity::ZenerVoltage => "V_Z",
+            RowQuantity::ZenerResistance => "r_Z",
+            RowQuantity::ZenerTemperatureCoefficient => "TC_VZ",
+            RowQuantity::BaseEmitterTemperatureCoefficient => "TC_VBE",
+            RowQuantity::ResistanceCoefficient => "TCR",
+            RowQuantity::Tolerance => "tolerance",
+            RowQuantity::ColdResistance => "R_cold",
+            RowQuantity::Resistance => "R",
+            RowQuantity::Inductance => "L",
+            RowQuantity::OutputCapacitance => "C_ob",
+            RowQuantity::InputCapacitance => "C_ib",
+            RowQuantity::TransitionFrequency => "f_T",
+        }
+    }
+
+    pub fn dimension(self) -> Dimension {
+        const PER_KELVIN: Dimension = Dimension([0, 0, 0, 0, -2]);
+        const VOLT_PER_KELVIN: Dimension = Dimension([4, 2, -6, -2, -2]);
+        match self {
+            RowQuantity::CurrentGain | RowQuantity::Tolerance => Dimension::NONE,
+            RowQuantity::BaseEmitterVoltage
+            | RowQuantity::BaseEmitterSaturation
+            | RowQuantity::CollectorEmitterSaturation
+            | RowQuantity::ForwardVoltage
+            | RowQuantity::ZenerVoltage => Dimension::VOLT,
+            RowQuantity::CollectorCutoff | RowQuantity::ReverseCurrent => Dimension::AMPERE,
+            RowQuantity::OutputConductance => Dimension::SIEMENS,
+            RowQuantity::ZenerResistance | RowQuantity::ColdResistance | RowQuantity::Resistance => {
+                Dimension::OHM
+            }
+            RowQuantity::ZenerTemperatureCoefficient | RowQuantity::BaseEmitterTemperatureCoefficient => {
+                VOLT_PER_KELVIN
+            }
+            RowQuantity::ResistanceCoefficient => PER_KELVIN,
+            RowQuantity::Inductance => Dimension::HENRY,
+            RowQuantity::OutputCapacitance | RowQuantity::InputCapacitance => Dimension::FARAD,
+            RowQuantity::TransitionFrequency => Dimension::HERTZ,
+        }
+    }
+
+    /// The bias without which a row of this quantity says nothing.
+    pub fn needs(self) -> &'static [&'static str] {
+        match self {
+            RowQuantity::CurrentGain | RowQuantity::BaseEmitterVoltage | RowQuantity::OutputConductance => {
+                &["I_C", "V_CE"]
+            }
+            RowQuantity::BaseEmitterSaturation | RowQuantity::CollectorEmitterSaturation => &["I_C", "I_B"],
+            RowQuantity::CollectorCutoff => &["V_CB"],
+            RowQuantity::ForwardVoltage => &["I_F"],
+            RowQuantity::ReverseCurrent => &["V_R"],
+            RowQuantity::ZenerVoltage | RowQuantity::ZenerResistance => &["I_Z"],
+            _ => &[],
+        }
+    }
+}
+
+impl RatingQuantity {
+    pub const ALL: [RatingQuantity; 16] = [
+        RatingQuantity::CollectorEmitter,
+        RatingQuantity::CollectorBase,
+        RatingQuantity::EmitterBase,
+        RatingQuantity::CollectorCurrent,
+        RatingQuantity::PeakCollectorCurrent,
+        RatingQuantity::BaseCurrent,
+        RatingQuantity::Dissipation,
+        RatingQuantity::JunctionTemperature,
+        RatingQuantity::JunctionToAmbient,
+        RatingQuantity::JunctionToCase,
+        RatingQuantity::Reverse,
+        RatingQuantity::ForwardCurrent,
+        RatingQuantity::PeakForwardCurrent,
+        RatingQuantity::ZenerCurrent,
+        RatingQuantity::Voltage,
+        RatingQuantity::Current,
+    ];
+
+    /// The letter symbol, as a record writes it.
+    pub fn symbol(self) -> &'static str {
+        match self {
+            RatingQuantity::CollectorEmitter => "V_CEO",
+            RatingQuantity::CollectorBase => "V_CBO",
+            RatingQuantity::EmitterBase => "V_EBO",
+            RatingQuantity::CollectorCurrent => "I_C",
+            RatingQuantity::PeakCollectorCurrent => "I_CM",
+            RatingQuantity::BaseCurrent => "I_B",
+            RatingQuantity::Dissipation => "P_tot",
+            RatingQuantity::JunctionTemperature => "T_j",
+            RatingQuantity::JunctionToAmbient => "R_th(j-a)",
+            RatingQuantity::JunctionToCase => "R_th(j-c)",
+            RatingQuantity::Reverse => "V_R",
+            RatingQuantity::ForwardCurrent => "I_F",
+            RatingQuantity::PeakForwardCurrent => "I_FM",
+            RatingQuantity::ZenerCurrent => "I_Z",
+            RatingQuantity::Voltage => "V",
+            RatingQuantity::Current => "I",
+        }
+    }
+
+    pub fn kind(self) -> Kind {
+        match self {
+            RatingQuantity::CollectorEmitter
+            | RatingQuantity::CollectorBase
+            | RatingQuantity::EmitterBase
+            | RatingQuantity::Reverse
+            | RatingQuantity::Voltage => Kind::of(Dimension::VOLT),
+            RatingQuantity::CollectorCurrent
+            | RatingQuantity::PeakCollectorCurrent
+            | RatingQuantity::BaseCurrent
+            | RatingQuantity::ForwardCurrent
+            | RatingQuantity::PeakForwardCurrent
+            | RatingQuantity::ZenerCurrent
+            | RatingQuantity::Current => Kind::of(Dimension::AMPERE),
+            RatingQuantity::Dissipation => Kind::of(Dimension::WATT),
+            RatingQuantity::JunctionTemperature => Kind::TEMPERATURE,
+            RatingQuantity::JunctionToAmbient | RatingQuantity::JunctionToCase => {
+                Kind::of(Dimension::KELVIN_PER_WATT)
+            }
+        }
+    }
 }
 
 impl Part {
