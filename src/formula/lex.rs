@@ -12,6 +12,8 @@ use crate::source::Place;
 /// The longest expression, in bytes, and the deepest nesting of its brackets.
 pub(super) const LONGEST: usize = 2000;
 pub(super) const DEEPEST: usize = 40;
+/// The most operators in an expression: its tree fits the stack of a worker thread (2 MiB) many times over.
+const MOST_OPERATORS: usize = 200;
 
 #[derive(Clone, Debug)]
 pub(super) enum Word {
@@ -257,10 +259,16 @@ impl Lexer<'_> {
         // For each open bracket: where it is, signs seen inside, whether it belongs to a function.
         let mut open: Vec<(usize, Level)> = vec![(0, Level::default())];
         let mut operand_before = false;
-        let mut chained = 0;
+        let (mut chained, mut operators) = (0, 0);
         for (i, token) in tokens.iter().enumerate() {
             let here = |message: &str| self.error(token.from, token.to, message);
             let level = open.last_mut().map(|(_, level)| level);
+            // A sum of many terms is a tree as deep as it is long, and every later step walks down it.
+            operators += usize::from(matches!(token.word, Word::Sign(sign) if !"(),".contains(sign)));
+            if operators > MOST_OPERATORS {
+                return Err(here("too many operators in one formula")
+                    .expected(format!("at most {MOST_OPERATORS}; split it over several lines")));
+            }
             // Signs in a row and powers of powers nest as brackets do.
             let prefix = matches!(token.word, Word::Sign('-')) && !operand_before;
             chained += usize::from(prefix || matches!(token.word, Word::Sign('^')));

@@ -320,3 +320,78 @@ fn readings_aloud_tell_trees_apart() {
     assert_ne!(say("x / (y / z)"), say("(x / y) / z"));
     assert_ne!(say("(x + y)^2"), say("x + y^2"));
 }
+
+#[test]
+fn long_formulas_fit_the_stack_and_bytes_are_never_a_panic() {
+    for sign in ["+", "-", "*", "/"] {
+        let long = vec!["x"; 201].join(sign);
+        let formula = Formula::parse(&long, &place()).unwrap();
+        assert!(formula.kind(&kind, &mut NAMES.into_iter()).is_ok());
+        assert_eq!(formula.names().len(), 201);
+        assert!(formula.compile(&|_| Some(0)).unwrap().eval(&[1.0]).is_finite());
+        assert!(formula::spoken(&formula.expr).contains('x'));
+        let _ = formula::symbols(&formula.expr);
+        let longer = vec!["x"; 990].join(sign);
+        assert!(found(&longer).unwrap_err().contains("too many operators"));
+    }
+    let nested = format!("{}x{}", "if(x < 1, 1, ".repeat(30), ")".repeat(30));
+    let formula = Formula::parse(&nested, &place()).unwrap();
+    assert!(formula.compile(&|_| Some(0)).is_err_and(|error| error.message.contains("nested too deep")));
+    let mut seed = 17_u64;
+    for _ in 0..20_000 {
+        let bytes: Vec<u8> = (0..24)
+            .map(|_| {
+                seed = seed.wrapping_mul(6364136223846793005).wrapping_add(1442695040888963407);
+                (seed >> 33) as u8
+            })
+            .collect();
+        let text = String::from_utf8_lossy(&bytes);
+        let _ = found(&text);
+        let _ = Relation::parse(&text, &place());
+        let _ = qsheaf::quantity::parse(&text, &place());
+    }
+}
+
+/// Precedence without brackets, against an evaluator of its own: powers to the right, then signs, products, sums.
+#[test]
+fn random_chains_rank_their_operators_as_mathematics_does() {
+    let mut seed = 23_u64;
+    let mut next = |n: u64| {
+        seed = seed.wrapping_mul(6364136223846793005).wrapping_add(1442695040888963407);
+        (seed >> 33) % n
+    };
+    for _ in 0..3000 {
+        let (mut text, mut sum) = (String::new(), 0.0);
+        for term in 0..=next(3) {
+            let minus = term > 0 && next(2) == 0;
+            let mut product = 1.0;
+            let mut part = String::new();
+            for factor in 0..=next(3) {
+                let over = factor > 0 && next(2) == 0;
+                let tower: Vec<u64> = (0..=next(3)).map(|_| next(3) + 1).collect();
+                let value = tower.iter().rev().fold(1.0, |power, &base| libm::pow(base as f64, power));
+                let written: Vec<String> = tower.iter().map(u64::to_string).collect();
+                part += if factor == 0 {
+                    ""
+                } else if over {
+                    " / "
+                } else {
+                    " * "
+                };
+                part += &written.join("^");
+                product = if over { product / value } else { product * value };
+            }
+            text += if term == 0 {
+                ""
+            } else if minus {
+                " - "
+            } else {
+                " + "
+            };
+            text += &part;
+            sum = if minus { sum - product } else { sum + product };
+        }
+        let got = value(&text);
+        assert!((got - sum).abs() <= 1e-9 * sum.abs().max(1.0) || got == sum, "{text}: {got} {sum}");
+    }
+}
