@@ -12,8 +12,8 @@ use crate::source::Place;
 /// The longest expression, in bytes, and the deepest nesting of its brackets.
 pub(super) const LONGEST: usize = 2000;
 pub(super) const DEEPEST: usize = 40;
-/// The most operators in an expression: its tree fits the stack of a worker thread (2 MiB) many times over.
-const MOST_OPERATORS: usize = 200;
+/// The most operators in an expression: its tree fits the stack of a worker thread (2 MiB) with room to spare.
+const MOST_OPERATORS: usize = 64;
 
 #[derive(Clone, Debug)]
 pub(super) enum Word {

@@ -186,7 +186,7 @@ fn mistakes_are_errors_with_their_place() {
     assert!(found(&deep).is_err());
     for chain in ["-", "x^", "x^-", "2 - -"] {
         let long = format!("{}x", chain.repeat(300));
-        assert!(found(&long).unwrap_err().contains("too many signs and powers"), "{chain}");
+        assert!(found(&long).unwrap_err().contains("in one formula"), "{chain}");
     }
     assert_eq!(found("-300 °C").unwrap_err(), "11: this temperature lies below absolute zero");
     assert_eq!(found("1e305 MV").unwrap_err(), "11: this is not a finite number");
@@ -324,10 +324,10 @@ fn readings_aloud_tell_trees_apart() {
 #[test]
 fn long_formulas_fit_the_stack_and_bytes_are_never_a_panic() {
     for sign in ["+", "-", "*", "/"] {
-        let long = vec!["x"; 201].join(sign);
+        let long = vec!["x"; 65].join(sign);
         let formula = Formula::parse(&long, &place()).unwrap();
         assert!(formula.kind(&kind, &mut NAMES.into_iter()).is_ok());
-        assert_eq!(formula.names().len(), 201);
+        assert_eq!(formula.names().len(), 65);
         assert!(formula.compile(&|_| Some(0)).unwrap().eval(&[1.0]).is_finite());
         assert!(formula::spoken(&formula.expr).contains('x'));
         let _ = formula::symbols(&formula.expr);
