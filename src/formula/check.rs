@@ -76,7 +76,17 @@ impl Names<'_> {
                 }
                 found
             }
-            Expr::Negate(inner) => self.of(inner, diagnostics).map(thermodynamic),
+            Expr::Negate(inner) => {
+                let kind = self.of(inner, diagnostics)?;
+                if kind.point {
+                    diagnostics.push(
+                        Diagnostic::error(expr.place(), "a temperature takes no minus sign")
+                            .expected("a difference of two temperatures, or a number such as `-20 °C`"),
+                    );
+                    return None;
+                }
+                Some(kind)
+            }
             Expr::Binary { operator, left, right, .. } => {
                 let sides = (self.of(left, diagnostics), self.of(right, diagnostics));
                 let (Some(a), Some(b)) = sides else { return None };
@@ -276,7 +286,7 @@ fn clash(place: &crate::source::Place, what: &str, a: Kind, b: Kind) -> Diagnost
             place,
             format!("{what} do not fit: {one} on the left, {other} on the right"),
         )
-        .expected("two temperatures (in °C) or two differences (in K)");
+        .expected("two temperatures (such as 40 °C) or two differences (such as 40 K)");
     }
     Diagnostic::error(place, format!("{what} do not fit: {} on the left, {} on the right", name(a), name(b)))
         .expected("the same dimension on both sides")

@@ -12,6 +12,8 @@ use crate::source::Place;
 /// The longest expression, in bytes, and the deepest nesting of its brackets.
 pub(super) const LONGEST: usize = 2000;
 pub(super) const DEEPEST: usize = 40;
+/// The most operators in an expression: its tree fits the stack of a worker thread (2 MiB) with room to spare.
+const MOST_OPERATORS: usize = 64;
 
 #[derive(Clone, Debug)]
 pub(super) enum Word {
@@ -60,10 +62,46 @@ impl Lexer<'_> {
             }
             let token = self.token(at, c)?;
             at = token.to;
+            let token = self.signed(token, &mut tokens)?;
             tokens.push(token);
         }
         self.check(&tokens)?;
         Ok(tokens)
+    }
+
+    /// A minus sign before a literal on a scale with its own zero belongs to the number: `-20 °C` is 253.15 K, not minus
+    /// 293.15 K, and `-3 dB` is a ratio below one, not a negative one. Takes such a sign off `before`.
+    fn signed(&self, token: Token, before: &mut Vec<Token>) -> Result<Token, Diagnostic> {
+        let Word::Operand(Expr::Literal { value, unit, written, .. }) = &token.word else { return Ok(token) };
+        let from = match before.as_slice() {
+            [rest @ .., minus] if matches!(minus.word, Word::Sign('-')) => {
+                let value_before =
+                    rest.last().is_some_and(|t| matches!(t.word, Word::Operand(_) | Word::Sign(')')));
+                (!value_before).then_some(minus.from)
+            }
+            _ => None,
+        };
+        let own_zero = unit.kind.point || unit.symbol == "dB";
+        let (value, written, from) = match from {
+            Some(from) if own_zero => {
+                before.pop();
+                (unit.to_si(-unit.from_si(*value)), format!("−{written}"), from)
+            }
+            _ => (*value, written.clone(), token.from),
+        };
+        if !value.is_finite() {
+            return Err(self
+                .error(from, token.to, "this is not a finite number")
+                .expected("a number between 1e-300 and 1e300"));
+        }
+        if unit.kind.point && value < 0.0 {
+            return Err(self
+                .error(from, token.to, "this temperature lies below absolute zero")
+                .expected("a temperature from -273.15 °C on"));
+        }
+        let place = self.place.within(self.text, from, token.to);
+        let literal = Expr::Literal { value, unit: unit.clone(), written, place };
+        Ok(Token { word: Word::Operand(literal), from, to: token.to })
     }
 
     fn token(&self, at: usize, c: char) -> Result<Token, Diagnostic> {
@@ -143,6 +181,9 @@ impl Lexer<'_> {
         let length =
             rest.find(|c: char| !(c.is_alphanumeric() || "°%‰Ω_/·⋅²".contains(c))).unwrap_or(rest.len());
         let mut word = &rest[..length];
+        if let Some(end) = crate::quantity::spaced_celsius(rest) {
+            return Ok(Some((Unit::celsius(), from + end)));
+        }
         if !word.starts_with(|c: char| c.is_alphabetic() || "°%‰".contains(c)) {
             return Ok(None);
         }
@@ -218,9 +259,23 @@ impl Lexer<'_> {
         // For each open bracket: where it is, signs seen inside, whether it belongs to a function.
         let mut open: Vec<(usize, Level)> = vec![(0, Level::default())];
         let mut operand_before = false;
+        let (mut chained, mut operators) = (0, 0);
         for (i, token) in tokens.iter().enumerate() {
             let here = |message: &str| self.error(token.from, token.to, message);
             let level = open.last_mut().map(|(_, level)| level);
+            // A sum of many terms is a tree as deep as it is long, and every later step walks down it.
+            operators += usize::from(matches!(token.word, Word::Sign(sign) if !"(),".contains(sign)));
+            if operators > MOST_OPERATORS {
+                return Err(here("too many operators in one formula")
+                    .expected(format!("at most {MOST_OPERATORS}; split it over several lines")));
+            }
+            // Signs in a row and powers of powers nest as brackets do.
+            let prefix = matches!(token.word, Word::Sign('-')) && !operand_before;
+            chained += usize::from(prefix || matches!(token.word, Word::Sign('^')));
+            if chained > DEEPEST {
+                return Err(here("too many signs and powers in one formula")
+                    .expected(format!("at most {DEEPEST}; split it over several lines")));
+            }
             match &token.word {
                 Word::Operand(_) | Word::Function(_) | Word::If => {
                     if operand_before {

@@ -132,6 +132,8 @@ fn binary(operator: Binary, left: f64, right: f64) -> f64 {
         Binary::Multiply => left * right,
         Binary::Divide => left / right,
         Binary::Power => libm::pow(left, right),
+        // A short in parallel with anything is a short, another short included.
+        Binary::Parallel if left == 0.0 && right == 0.0 => 0.0,
         Binary::Parallel => left * right / (left + right),
     }
 }

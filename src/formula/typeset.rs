@@ -169,7 +169,9 @@ fn literal(value: f64, unit: &Unit, written: &str) -> (Math, Binding) {
     }
     // An IEC 60062 code reads `4k7`: its digits alone are not the number.
     let (printed, exponent) = match digits.replace('−', "-").parse::<f64>() {
-        Ok(read) if (unit.to_si(read) - value).abs() <= 1e-9 * value.abs() => (digits.to_owned(), None),
+        Ok(read) if (unit.to_si(read) - value).abs() <= 1e-9 * value.abs() => {
+            (digits.replace('-', "−"), None)
+        }
         _ => {
             let printed = quantity::print(value, unit, 6);
             (trimmed(&printed.digits), printed.exponent)

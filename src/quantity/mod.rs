@@ -13,7 +13,7 @@ mod source;
 mod unit;
 
 pub use dimension::Dimension;
-pub(crate) use parse::number_length;
+pub(crate) use parse::{number_length, spaced_celsius};
 pub use parse::{parse, parse_as};
 pub use print::{Printed, digits_apart, print, significant, text};
 pub use source::parse_source;

@@ -21,6 +21,19 @@ pub fn parse(text: &str, place: &Place) -> Result<Quantity, Diagnostic> {
 /// As [`parse`], and a unit of another dimension.
 pub fn parse_as(text: &str, place: &Place, kind: Kind) -> Result<Quantity, Diagnostic> {
     let quantity = Reader { text, at: 0, place, implied: Some(kind) }.quantity()?;
+    let whole = || place.within(text, 0, text.len());
+    if quantity.unit.symbol.is_empty() && kind.dimension != Dimension::NONE {
+        return Err(Diagnostic::error(&whole(), "the unit is missing")
+            .expected(format!("a value in {}", kind.dimension)));
+    }
+    if quantity.kind.dimension == kind.dimension && quantity.kind.point != kind.point {
+        let (is, wanted) = if kind.point {
+            ("a temperature difference, not a temperature", "a value in °C")
+        } else {
+            ("a temperature, not a temperature difference", "a value in K")
+        };
+        return Err(Diagnostic::error(&whole(), format!("this is {is}")).expected(wanted));
+    }
     if quantity.kind.dimension != kind.dimension {
         return Err(Diagnostic::error(
             &place.within(text, 0, text.len()),
@@ -97,6 +110,17 @@ impl<'a> Reader<'a> {
                 )
                 .expected("`± tolerance`, `to` another value, `, usually` a value, or nothing more"));
         }
+        let Spread { low, nominal, high } = quantity.spread;
+        if [low, nominal, high].iter().any(|value| !value.is_finite()) {
+            return Err(self
+                .error(0, self.text.len(), "a value or its tolerance is not finite")
+                .expected(EXAMPLES));
+        }
+        if quantity.kind.point && low < 0.0 {
+            return Err(self
+                .error(0, self.text.len(), "this temperature lies below absolute zero")
+                .expected("a temperature from -273.15 °C on"));
+        }
         quantity.text = self.text.trim().to_owned();
         Ok(quantity)
     }
@@ -158,11 +182,11 @@ impl<'a> Reader<'a> {
             return Ok(self.made(Spread { low: nominal - by, nominal, high: nominal + by }, unit, true));
         }
         if self.take(&["±", "+/-", "+-"]) {
-            let by = self.deviation(nominal, &unit)?;
-            return Ok(self.made(Spread { low: nominal - by, nominal, high: nominal + by }, unit, true));
+            let (low, high) = self.ends(nominal, &unit)?;
+            return Ok(self.made(Spread { low, nominal, high }, unit, true));
         }
         if self.take(&["+"]) {
-            let up = self.deviation(nominal, &unit)?;
+            let (_, high) = self.ends(nominal, &unit)?;
             self.take(&["/", ","]);
             let from = self.at;
             if !self.take(&["-", "−"]) {
@@ -170,15 +194,33 @@ impl<'a> Reader<'a> {
                     .error(from, self.text.len(), "the lower tolerance is missing")
                     .expected("`+10 % -5 %`"));
             }
-            let down = self.deviation(nominal, &unit)?;
-            return Ok(self.made(Spread { low: nominal - down, nominal, high: nominal + up }, unit, true));
+            let (low, _) = self.ends(nominal, &unit)?;
+            return Ok(self.made(Spread { low, nominal, high }, unit, true));
         }
         Ok(self.made(Spread::exact(nominal), unit, false))
     }
 
-    /// A deviation from `nominal` in SI units: relative in % or ppm, or a difference in the nominal's dimension.
-    fn deviation(&mut self, nominal: f64, unit: &Unit) -> Result<f64, Diagnostic> {
+    /// The two ends that a tolerance gives around `nominal` (SI). A tolerance in dB multiplies and divides a level, as
+    /// levels add; every other one is added and subtracted.
+    fn ends(&mut self, nominal: f64, unit: &Unit) -> Result<(f64, f64), Diagnostic> {
         let read = self.read()?;
+        let level = |unit: &Unit| unit.symbol == "dB";
+        let given = read.unit.as_ref().is_some_and(level);
+        if read.value >= 0.0 && (given || level(unit)) {
+            if !(given && level(unit)) {
+                return Err(self
+                    .error(read.from, read.to, "only a level has a tolerance in dB, and it has no other")
+                    .expected("`40 dB ± 1 dB`, or a ratio with a tolerance in %"));
+            }
+            let ratio = unit.to_si(read.value);
+            return Ok((nominal / ratio, nominal * ratio));
+        }
+        let by = self.deviation(read, nominal, unit)?;
+        Ok((nominal - by, nominal + by))
+    }
+
+    /// A deviation from `nominal` in SI units: relative in % or ppm, or a difference in the nominal's dimension.
+    fn deviation(&self, read: Read, nominal: f64, unit: &Unit) -> Result<f64, Diagnostic> {
         let given = read.unit.clone();
         if read.value < 0.0 {
             return Err(self
@@ -187,7 +229,8 @@ impl<'a> Reader<'a> {
         }
         let relative = |unit: &Unit| matches!(unit.symbol.as_str(), "%" | "‰" | "ppm");
         match given {
-            Some(given) if relative(&given) && !relative(unit) => {
+            // `75 % ± 5 %` spans 70 % to 80 %; `50 ppm ± 10 %` spans 45 ppm to 55 ppm.
+            Some(given) if relative(&given) && (!relative(unit) || given.factor > unit.factor) => {
                 if unit.kind.point {
                     return Err(self
                         .error(read.from, read.to, "a relative tolerance of a temperature says nothing")
@@ -266,8 +309,8 @@ impl<'a> Reader<'a> {
             self.at = back;
             return Ok(None);
         }
-        if word == "deg" && rest[length..].trim_start().starts_with('C') {
-            self.at = from + rest.find('C').map_or(length, |at| at + 1);
+        if let Some(end) = spaced_celsius(rest) {
+            self.at = from + end;
             return Ok(Some(Unit::celsius()));
         }
         match parse_unit(word) {
@@ -311,6 +354,15 @@ impl<'a> Reader<'a> {
 
 fn named(unit: &Unit) -> String {
     if unit.symbol.is_empty() { "a plain number".to_owned() } else { format!("`{}`", unit.symbol) }
+}
+
+/// Where `deg C` or `° C` at the start of `text` ends, in bytes.
+pub(crate) fn spaced_celsius(text: &str) -> Option<usize> {
+    let after = text.strip_prefix("deg").or_else(|| text.strip_prefix('°'))?;
+    let rest = after.trim_start_matches([' ', '\u{a0}', '\u{202f}']).strip_prefix('C')?;
+    let apart = !after.starts_with('C');
+    let ends = !rest.starts_with(|c: char| c.is_alphanumeric() || "_/·⋅*²".contains(c));
+    (apart && ends).then_some(text.len() - rest.len())
 }
 
 /// The length in bytes of the number at the start of `text`: sign, digits, point, exponent.

@@ -51,6 +51,9 @@ fn values_read_as_people_write_them() {
     reads("75 %", 0.75, 0.75, 0.75, "%");
     reads("75 % ± 5 %", 0.7, 0.75, 0.8, "%");
     reads("40 dB", 100.0, 100.0, 100.0, "dB");
+    reads("50 ppm ± 10 %", 45e-6, 50e-6, 55e-6, "ppm");
+    reads("40 dB ± 20 dB", 10.0, 100.0, 1000.0, "dB");
+    reads("25 deg C", 298.15, 298.15, 298.15, "°C");
     reads("4k7", 4700.0, 4700.0, 4700.0, "kΩ");
     reads("4k7 ± 1 %", 4653.0, 4700.0, 4747.0, "kΩ");
     reads("R47", 0.47, 0.47, 0.47, "mΩ");
@@ -76,11 +79,21 @@ fn what_is_not_understood_is_an_error_at_its_place() {
         ("1 V to 3 A", "9: `V` and `A` do not go together"),
         ("25 °C ± 5 %", "17: a relative tolerance of a temperature says nothing"),
         ("1e999 V", "9: `1e999` is not a finite number"),
+        ("1e305 MV", "9: a value or its tolerance is not finite"),
+        ("1.5e308 V ± 50 %", "9: a value or its tolerance is not finite"),
+        ("-300 °C", "9: this temperature lies below absolute zero"),
+        ("40 dB ± 5 %", "17: only a level has a tolerance in dB, and it has no other"),
+        ("0.5 ± 3 dB", "15: only a level has a tolerance in dB, and it has no other"),
         ("5 V ± -3 V", "15: a tolerance is not negative"),
     ] {
         assert_eq!(read(text).unwrap_err(), expected, "{text}");
     }
-    assert!(quantity::parse_as("3 A", &place(), Kind::of(Dimension::OHM)).is_err());
+    let refused = |text: &str, kind: Kind| quantity::parse_as(text, &place(), kind).unwrap_err().message;
+    assert_eq!(refused("3 A", Kind::of(Dimension::OHM)), "this is a value in A, not in Ω");
+    assert_eq!(refused("470", Kind::of(Dimension::OHM)), "the unit is missing");
+    assert_eq!(refused("125 K", Kind::TEMPERATURE), "this is a temperature difference, not a temperature");
+    let kelvin = Kind::of(Dimension::KELVIN);
+    assert_eq!(refused("40 °C", kelvin), "this is a temperature, not a temperature difference");
 }
 
 /// The 273.15 K between the scales never enter a difference (SI Brochure, 9th edition, 2.3.1).
@@ -143,6 +156,12 @@ fn sources_are_told_apart() {
         ("from memory", Origin::Memory),
         ("memory", Origin::Memory),
         ("somebody said so", Origin::Assumption),
+        ("typical value, 2 people said so", Origin::Assumption),
+        ("spreadsheet of a colleague", Origin::Assumption),
+        ("not on the sheet; from memory", Origin::Memory),
+        ("benchmarks", Origin::Assumption),
+        ("LB-1 3.4", Origin::Specification),
+        ("handbook p. 4", Origin::Specification),
     ] {
         assert_eq!(quantity::parse_source(text).origin, origin, "{text}");
     }
