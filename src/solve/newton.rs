@@ -158,6 +158,9 @@ impl Plan {
                 *right = -residual;
             }
             self.solve_linearised(scratch)?;
+            if !scratch.step.iter().all(|step| step.is_finite()) {
+                return Err(Failure::NotConverged { residual: f64::INFINITY });
+            }
             let mut limited = false;
             moved = 0.0;
             for (k, y) in scratch.y.iter_mut().enumerate() {
@@ -187,9 +190,6 @@ impl Plan {
                     scratch.u[port + j] = allowed;
                     scratch.low[port + j] = if allowed == to { (from - to) + step } else { 0.0 };
                 }
-            }
-            if !moved.is_finite() {
-                return Err(Failure::NotConverged { residual: f64::INFINITY });
             }
             if limited {
                 moved = f64::INFINITY;
@@ -374,9 +374,10 @@ fn recall(scratch: &mut Scratch) {
     scratch.low.iter_mut().for_each(|low| *low = 0.0);
 }
 
-/// Notes an attempt, once in a row.
+/// Notes an attempt, once in a row; going on from a temperature to the next is not worth a note.
 pub(super) fn note(attempts: &mut Vec<Attempt>, attempt: Attempt) {
-    if attempts.last() != Some(&attempt) {
+    let going_on = attempt == Attempt::FromStart && !attempts.is_empty();
+    if attempts.last() != Some(&attempt) && !going_on {
         attempts.push(attempt);
     }
 }
