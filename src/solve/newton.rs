@@ -64,6 +64,12 @@ impl Plan {
         outcome
     }
 
+    /// Newton's method from the present state to where its steps are so small that the next one would be accepted, without
+    /// confirming it; false where it does not get there.
+    pub(super) fn approach(&self, scratch: &mut Scratch) -> bool {
+        self.newton(scratch, Stage { last: false, steps: STAGE_STEPS, ..WHOLE }).is_ok()
+    }
+
     /// Everything at zero.
     pub(super) fn rest(&self, scratch: &mut Scratch) {
         scratch.y.clear();

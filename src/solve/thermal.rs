@@ -127,7 +127,26 @@ impl Plan {
         }
     }
 
-    /// The circuit at new temperatures, from the state it is in; fills `heat.excess`.
+    /// The circuit at new temperatures, from the state it is in, without confirmation where that is enough (the error is
+    /// infinite then); fills `heat.excess`.
+    fn approximate(
+        &self,
+        branches: &[Branch],
+        ambient: f64,
+        scratch: &mut Scratch,
+        attempts: &mut Vec<Attempt>,
+    ) -> Result<f64, Failure> {
+        self.reheat(branches, scratch)?;
+        let error = if self.approach(scratch) {
+            f64::INFINITY
+        } else {
+            self.electrical(scratch, Attempt::Direct, attempts)?
+        };
+        self.weigh(branches, ambient, scratch);
+        Ok(error)
+    }
+
+    /// The circuit at new temperatures, confirmed; fills `heat.excess`. Returns the estimated voltage error (V).
     fn follow(
         &self,
         branches: &[Branch],
@@ -136,6 +155,14 @@ impl Plan {
         scratch: &mut Scratch,
         attempts: &mut Vec<Attempt>,
     ) -> Result<f64, Failure> {
+        self.reheat(branches, scratch)?;
+        let error = self.electrical(scratch, first, attempts)?;
+        self.weigh(branches, ambient, scratch);
+        Ok(error)
+    }
+
+    /// Devices at the temperatures in `heat.temperatures`.
+    fn reheat(&self, branches: &[Branch], scratch: &mut Scratch) -> Result<(), Failure> {
         let mut changed = false;
         for h in 0..scratch.heat.hot.len() {
             let (element, device, _) = scratch.heat.hot[h];
@@ -146,7 +173,11 @@ impl Plan {
         if changed {
             self.eliminate(scratch)?;
         }
-        let error = self.electrical(scratch, first, attempts)?;
+        Ok(())
+    }
+
+    /// By how much each device would be warmer than it is.
+    fn weigh(&self, branches: &[Branch], ambient: f64, scratch: &mut Scratch) {
         scratch.heat.excess.clear();
         for h in 0..scratch.heat.hot.len() {
             let (element, device, r_th) = scratch.heat.hot[h];
@@ -154,7 +185,6 @@ impl Plan {
             let excess = ambient + r_th * p - scratch.heat.temperatures[device];
             scratch.heat.excess.push(excess);
         }
-        Ok(error)
     }
 
     fn equilibrium(
@@ -190,6 +220,10 @@ impl Plan {
         let mut gain: Option<f64> = None;
         for _ in 0..STEPS {
             if largest(&scratch.heat.excess) <= EXCESS {
+                if error.is_infinite() {
+                    error = self.follow(branches, ambient, Attempt::FromStart, scratch, attempts)?;
+                    continue;
+                }
                 let rise = scratch.heat.hot.iter().map(|&(_, device, _)| scratch.heat.temperatures[device]);
                 let rise = rise.fold(0.0, f64::max) - ambient;
                 if rise * GROWTH >= 1.0 && gain.is_none_or(|gain| gain >= 0.5) {
@@ -212,7 +246,7 @@ impl Plan {
                 }
                 heat.temperatures[device] = to;
             }
-            error = self.follow(branches, ambient, Attempt::FromStart, scratch, attempts)?;
+            error = self.approximate(branches, ambient, scratch, attempts)?;
             let heat = &mut scratch.heat;
             // H += (s - H y) (s H) / (s H y), where y is what the excess fell by along the step s.
             heat.work.clear();
