@@ -31,7 +31,7 @@ pub(super) enum Law {
 /// A tangent to an exponential promises far too much voltage when it is followed upwards: at `v` with current i and slope
 /// i / n, a step d asks for the current i (1 + d / n), and the voltage that carries this current is v + n ln(1 + d / n).
 /// That is where the step goes. A junction that does not conduct yet has no useful tangent: it goes to its `entry`, the
-/// voltage of a small current, and from there on as before. (Nagel 1975 gives the history of such limits.)
+/// voltage of a small current, and from there on as before. (Our own derivation.)
 #[derive(Clone, Copy, PartialEq, Debug)]
 pub(super) struct Limit {
     /// Voltage (V) of e-fold current, forward; entry voltage forward.
@@ -112,8 +112,8 @@ impl Device {
                 let mut limit = Limit::junction(p.saturation_current, fold);
                 if p.breakdown_voltage.is_finite() {
                     limit.breakdown_fold = p.breakdown_slope;
-                    limit.breakdown_entry = p.breakdown_voltage
-                        - p.breakdown_slope * libm::log(p.breakdown_current / ENTRY_CURRENT).max(0.0);
+                    let decay = p.breakdown_slope * libm::log(p.breakdown_current / ENTRY_CURRENT).max(0.0);
+                    limit.breakdown_entry = (p.breakdown_voltage - decay).max(0.0);
                 }
                 Device {
                     law: Law::Diode(at),

@@ -64,6 +64,12 @@ impl Plan {
         outcome
     }
 
+    /// Newton's method from the present state to where its steps are so small that the next one would be accepted, without
+    /// confirming it; false where it does not get there.
+    pub(super) fn approach(&self, scratch: &mut Scratch) -> bool {
+        self.newton(scratch, Stage { last: false, steps: STAGE_STEPS, ..WHOLE }).is_ok()
+    }
+
     /// Everything at zero.
     pub(super) fn rest(&self, scratch: &mut Scratch) {
         scratch.y.clear();
@@ -158,6 +164,9 @@ impl Plan {
                 *right = -residual;
             }
             self.solve_linearised(scratch)?;
+            if !scratch.step.iter().all(|step| step.is_finite()) {
+                return Err(Failure::NotConverged { residual: f64::INFINITY });
+            }
             let mut limited = false;
             moved = 0.0;
             for (k, y) in scratch.y.iter_mut().enumerate() {
@@ -187,9 +196,6 @@ impl Plan {
                     scratch.u[port + j] = allowed;
                     scratch.low[port + j] = if allowed == to { (from - to) + step } else { 0.0 };
                 }
-            }
-            if !moved.is_finite() {
-                return Err(Failure::NotConverged { residual: f64::INFINITY });
             }
             if limited {
                 moved = f64::INFINITY;
@@ -374,9 +380,10 @@ fn recall(scratch: &mut Scratch) {
     scratch.low.iter_mut().for_each(|low| *low = 0.0);
 }
 
-/// Notes an attempt, once in a row.
+/// Notes an attempt, once in a row; going on from a temperature to the next is not worth a note.
 pub(super) fn note(attempts: &mut Vec<Attempt>, attempt: Attempt) {
-    if attempts.last() != Some(&attempt) {
+    let going_on = attempt == Attempt::FromStart && !attempts.is_empty();
+    if attempts.last() != Some(&attempt) && !going_on {
         attempts.push(attempt);
     }
 }

@@ -44,7 +44,8 @@ impl Plan {
         Ok(point)
     }
 
-    /// As [`Plan::solve`], into a point that is used again: nothing is allocated after the first call.
+    /// As [`Plan::solve`], into a point that is used again: nothing is allocated after the first call, but for thermal
+    /// equilibria that are not found at once.
     ///
     /// # Errors
     /// See [`Failure`]. Nothing in `point` but the attempts means anything then.
@@ -127,7 +128,26 @@ impl Plan {
         }
     }
 
-    /// The circuit at new temperatures, from the state it is in; fills `heat.excess`.
+    /// The circuit at new temperatures, from the state it is in, without confirmation where that is enough (the error is
+    /// infinite then); fills `heat.excess`.
+    fn approximate(
+        &self,
+        branches: &[Branch],
+        ambient: f64,
+        scratch: &mut Scratch,
+        attempts: &mut Vec<Attempt>,
+    ) -> Result<f64, Failure> {
+        self.reheat(branches, scratch)?;
+        let error = if self.approach(scratch) {
+            f64::INFINITY
+        } else {
+            self.electrical(scratch, Attempt::Direct, attempts)?
+        };
+        self.weigh(branches, ambient, scratch);
+        Ok(error)
+    }
+
+    /// The circuit at new temperatures, confirmed; fills `heat.excess`. Returns the estimated voltage error (V).
     fn follow(
         &self,
         branches: &[Branch],
@@ -136,6 +156,14 @@ impl Plan {
         scratch: &mut Scratch,
         attempts: &mut Vec<Attempt>,
     ) -> Result<f64, Failure> {
+        self.reheat(branches, scratch)?;
+        let error = self.electrical(scratch, first, attempts)?;
+        self.weigh(branches, ambient, scratch);
+        Ok(error)
+    }
+
+    /// Devices at the temperatures in `heat.temperatures`.
+    fn reheat(&self, branches: &[Branch], scratch: &mut Scratch) -> Result<(), Failure> {
         let mut changed = false;
         for h in 0..scratch.heat.hot.len() {
             let (element, device, _) = scratch.heat.hot[h];
@@ -146,7 +174,11 @@ impl Plan {
         if changed {
             self.eliminate(scratch)?;
         }
-        let error = self.electrical(scratch, first, attempts)?;
+        Ok(())
+    }
+
+    /// By how much each device would be warmer than it is.
+    fn weigh(&self, branches: &[Branch], ambient: f64, scratch: &mut Scratch) {
         scratch.heat.excess.clear();
         for h in 0..scratch.heat.hot.len() {
             let (element, device, r_th) = scratch.heat.hot[h];
@@ -154,7 +186,6 @@ impl Plan {
             let excess = ambient + r_th * p - scratch.heat.temperatures[device];
             scratch.heat.excess.push(excess);
         }
-        Ok(error)
     }
 
     fn equilibrium(
@@ -190,6 +221,10 @@ impl Plan {
         let mut gain: Option<f64> = None;
         for _ in 0..STEPS {
             if largest(&scratch.heat.excess) <= EXCESS {
+                if error.is_infinite() {
+                    error = self.follow(branches, ambient, Attempt::FromStart, scratch, attempts)?;
+                    continue;
+                }
                 let rise = scratch.heat.hot.iter().map(|&(_, device, _)| scratch.heat.temperatures[device]);
                 let rise = rise.fold(0.0, f64::max) - ambient;
                 if rise * GROWTH >= 1.0 && gain.is_none_or(|gain| gain >= 0.5) {
@@ -212,7 +247,7 @@ impl Plan {
                 }
                 heat.temperatures[device] = to;
             }
-            error = self.follow(branches, ambient, Attempt::FromStart, scratch, attempts)?;
+            error = self.approximate(branches, ambient, scratch, attempts)?;
             let heat = &mut scratch.heat;
             // H += (s - H y) (s H) / (s H y), where y is what the excess fell by along the step s.
             heat.work.clear();
@@ -253,10 +288,22 @@ impl Plan {
         scratch.heat.temperatures.iter_mut().for_each(|t| *t = ambient);
         self.rest(scratch);
         let mut error = self.follow(branches, ambient, Attempt::Direct, scratch, attempts)?;
-        let mut pace = 1.0_f64;
+        let (mut pace, mut near) = (1.0_f64, 1.0_f64);
+        let mut reached = scratch.heat.temperatures.clone();
         for _ in 0..WARMING_STEPS {
-            if largest(&scratch.heat.excess) <= EXCESS {
+            let size = largest(&scratch.heat.excess);
+            if size <= EXCESS {
                 return Ok(error);
+            }
+            reached.clone_from(&scratch.heat.temperatures);
+            if size <= near {
+                // Close to an equilibrium that lasts, or beside one that has just ceased to be.
+                if let Ok(error) = self.broyden(branches, ambient, Attempt::FromStart, scratch, attempts) {
+                    return Ok(error);
+                }
+                near = 0.05 * size;
+                scratch.heat.temperatures.clone_from(&reached);
+                self.follow(branches, ambient, Attempt::FromStart, scratch, attempts)?;
             }
             let heat = &mut scratch.heat;
             heat.before.clone_from(&heat.excess);
@@ -267,9 +314,33 @@ impl Plan {
                     return Err(Failure::ThermalRunaway { element });
                 }
             }
-            error = self.follow(branches, ambient, Attempt::FromStart, scratch, attempts)?;
+            match self.follow(branches, ambient, Attempt::FromStart, scratch, attempts) {
+                Ok(now) => error = now,
+                Err(failure) if pace < 1e-2 => {
+                    let heat = &scratch.heat;
+                    let hottest =
+                        (0..heat.hot.len()).max_by(|&a, &b| heat.before[a].total_cmp(&heat.before[b]));
+                    // On its way out of bounds, so steeply that the circuit cannot be followed any more.
+                    return match hottest {
+                        Some(h) if heat.before[h] > RUNAWAY_RISE => {
+                            Err(Failure::ThermalRunaway { element: heat.hot[h].0 })
+                        }
+                        _ => Err(failure),
+                    };
+                }
+                Err(_) => {
+                    pace *= 0.25;
+                    scratch.heat.temperatures.clone_from(&reached);
+                    error = self.follow(branches, ambient, Attempt::FromStart, scratch, attempts)?;
+                }
+            }
             let heat = &scratch.heat;
-            if heat.before.iter().zip(&heat.excess).any(|(a, b)| a * b < 0.0 && b.abs() > 0.5 * a.abs()) {
+            if heat
+                .before
+                .iter()
+                .zip(&heat.excess)
+                .any(|(a, b)| a * b < 0.0 && b.abs() > (0.5 * a.abs()).max(0.1))
+            {
                 pace = (0.5 * pace).max(1e-3);
             }
         }
@@ -291,33 +362,39 @@ impl Plan {
         let here = |scratch: &Scratch, h: usize| scratch.heat.temperatures[scratch.heat.hot[h].1];
         let centre: Vec<f64> = (0..k).map(|h| here(scratch, h)).collect();
         let mut direction: Vec<f64> = centre.iter().map(|t| (t - ambient).max(1e-6)).collect();
-        let mut gain = f64::INFINITY;
+        let (mut gain, mut shift) = (f64::INFINITY, 0.0_f64);
         for _ in 0..POWER_STEPS {
             let size = largest(&direction);
             if size == 0.0 {
                 gain = 0.0;
                 break;
             }
+            direction.iter_mut().for_each(|d| *d /= size);
             for h in 0..k {
                 let device = scratch.heat.hot[h].1;
-                scratch.heat.temperatures[device] = centre[h] + PROBE * direction[h] / size;
+                scratch.heat.temperatures[device] = centre[h] + PROBE * direction[h];
             }
             self.follow(branches, ambient, Attempt::FromStart, scratch, attempts)?;
             let before = gain;
+            let (mut along, mut square) = (0.0, 0.0);
             for h in 0..k {
                 // T_a + R_th P - centre, over the probe.
-                direction[h] = (scratch.heat.excess[h] + (here(scratch, h) - centre[h])) / PROBE;
+                let answer = (scratch.heat.excess[h] + (here(scratch, h) - centre[h])) / PROBE;
+                along += answer * direction[h];
+                square += direction[h] * direction[h];
+                direction[h] = answer + shift * direction[h];
             }
-            gain = largest(&direction);
-            if k == 1 || (gain - before).abs() < 1e-3 * gain {
+            gain = along / square;
+            // Cooling answers (negative gain) are harmless: put out of the way of the heating ones.
+            shift = shift.max(-2.0 * gain);
+            if k == 1 || (gain - before).abs() < 1e-3 * gain.abs().max(1e-2) {
                 break;
             }
         }
-        let signed = if k == 1 { direction.first().copied().unwrap_or(gain) } else { gain };
         for (&(_, device, _), t) in scratch.heat.hot.iter().zip(&centre) {
             scratch.heat.temperatures[device] = *t;
         }
-        if signed >= 1.0 {
+        if gain >= 1.0 {
             return Err(Failure::ThermalRunaway { element });
         }
         self.follow(branches, ambient, Attempt::FromStart, scratch, attempts)

@@ -169,3 +169,74 @@ fn a_start_changes_nothing_but_the_way() {
         "the same arguments give the same bits, whatever the scratch was used for before"
     );
 }
+
+/// Shared by threads, each with storage of its own, a plan gives the bits that it gives alone.
+#[test]
+fn threads_give_the_same_bits() {
+    let net = super::net::two_stage(full());
+    let plan = net.plan();
+    let first = plan
+        .solve(&net.branches, 298.15, qsheaf::solve::Thermal::ColdStart, None, &mut plan.scratch())
+        .expect("solves");
+    let series = |part: usize, of: usize| {
+        let mut scratch = plan.scratch();
+        (0..60)
+            .filter(|k| k % of == part)
+            .map(|k| {
+                let mut branches = net.branches.clone();
+                branches[3] = Branch::Resistor { ohms: 3e3 + 50.0 * k as f64 };
+                let thermal = qsheaf::solve::Thermal::ColdStart;
+                let point = plan.solve(&branches, 298.15, thermal, Some(&first.solution), &mut scratch);
+                (k, point.expect("solves"))
+            })
+            .collect::<Vec<_>>()
+    };
+    let alone = series(0, 1);
+    let together = std::thread::scope(|scope| {
+        let series = &series;
+        let threads: Vec<_> = (0..3).map(|part| scope.spawn(move || series(part, 3))).collect();
+        let mut all: Vec<_> = threads.into_iter().flat_map(|thread| thread.join().expect("ends")).collect();
+        all.sort_by_key(|(k, _)| *k);
+        all
+    });
+    assert_eq!(alone, together);
+}
+
+/// A circuit as written is compiled to the same plan as its topology.
+#[test]
+fn a_circuit_is_compiled() {
+    use qsheaf::circuit::{Element, ElementKind, Network};
+    let element = |designator: &str, kind, terminals: &[usize]| Element {
+        designator: designator.to_owned(),
+        kind,
+        terminals: terminals.to_vec(),
+        value: None,
+        resistance: None,
+        cold: None,
+        inductance: None,
+        part: None,
+        r_th: None,
+        rated_power: None,
+        rated_voltage: None,
+        place: qsheaf::source::Place::new(&"circuit.md".into(), 1, 1, 0),
+    };
+    let mut network = Network {
+        nodes: ["ground", "supply", "drive", "load", "base"].map(str::to_owned).to_vec(),
+        elements: vec![
+            element("BT1", ElementKind::Supply, &[1, 0]),
+            element("PS1", ElementKind::Supply, &[2, 0]),
+            element("R1", ElementKind::Resistor, &[1, 3]),
+            element("R2", ElementKind::Resistor, &[2, 4]),
+            element("Q1", ElementKind::Npn, &[3, 4, 0]),
+        ],
+    };
+    let plan = qsheaf::solve::Plan::of(&network).expect("fits");
+    assert_eq!((plan.nodes(), plan.elements()), (5, 5));
+    let net = switch(full());
+    let thermal = qsheaf::solve::Thermal::ColdStart;
+    let point = plan.solve(&net.branches, 298.15, thermal, None, &mut plan.scratch());
+    assert_eq!(point, net.solve(298.15));
+    network.elements[4].terminals.pop();
+    let unfit = qsheaf::solve::Plan::of(&network).expect_err("a transistor has three terminals");
+    assert_eq!(unfit, qsheaf::solve::Failure::Unfit { element: 4 });
+}

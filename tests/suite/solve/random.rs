@@ -174,3 +174,36 @@ fn stepping_takes_over() {
         "{ways:?}"
     );
 }
+
+/// In thermal equilibrium every junction is as warm as its own dissipation makes it, and the circuit laws hold.
+#[test]
+fn equilibria_are_in_balance() {
+    let (mut balanced, mut ran_away, mut other) = (0, 0, Vec::new());
+    for seed in 0..600 {
+        let (mut net, ambient) = network(seed, true);
+        let mut n = Numbers(seed);
+        for branch in &mut net.branches {
+            if let Branch::Transistor { r_th, .. } | Branch::Diode { r_th, .. } = branch {
+                *r_th = Some(n.decades(30.0, 400.0));
+            }
+        }
+        match net.hot(ambient) {
+            Ok(point) => {
+                balanced += 1;
+                check(&net, &point, seed);
+                for (branch, at) in net.branches.iter().zip(&point.elements) {
+                    if let Branch::Transistor { r_th: Some(r), .. } | Branch::Diode { r_th: Some(r), .. } =
+                        branch
+                    {
+                        assert!((at.t_j - ambient - r * at.p).abs() < 1e-7, "network {seed}: {at:?}");
+                        assert!(at.self_heated);
+                    }
+                }
+            }
+            Err(Failure::ThermalRunaway { .. }) => ran_away += 1,
+            Err(failure) => other.push((seed, failure)),
+        }
+    }
+    println!("{balanced} balanced, {ran_away} ran away, {other:?}");
+    assert!(balanced > 500 && other.len() < 6, "{balanced}, {other:?}");
+}
