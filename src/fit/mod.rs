@@ -1,11 +1,19 @@
 //! Part -> Model: parameters, spread axes, residuals.
+//!
+//! The typical column gives the nominal curve; the limits give one-sided spread axes: in every row's own test condition the
+//! end of an axis reaches the row's limit or lies outside it.
+
+mod diode;
+mod simulate;
+mod transistor;
 
 use serde::{Deserialize, Serialize};
 
 use crate::device::diode::Diode;
 use crate::device::transistor::Transistor;
-use crate::part::RowQuantity;
-use crate::quantity::Source;
+use crate::diagnostic::{Diagnostic, Diagnostics};
+use crate::part::{Part, PartKind, Row, RowQuantity};
+use crate::quantity::{self, Dimension, Kind, Source};
 
 /// How many spread coordinates a device has at most.
 pub const AXES: usize = 4;
@@ -102,6 +110,52 @@ pub struct Model {
     pub residuals: Vec<Residual>,
     /// What a reader should know: which effects have no row and are left out.
     pub notes: Vec<String>,
+}
+
+/// Fits the model of a transistor, diode or Zener to its record.
+///
+/// # Errors
+/// Rows that are missing or contradict each other, at their place; a part that is no junction device.
+pub fn fit(part: &Part) -> Result<Model, Diagnostics> {
+    match part.kind {
+        PartKind::Npn | PartKind::Pnp => transistor::fit(part),
+        PartKind::Diode | PartKind::Zener => diode::fit(part),
+        _ => Err(Diagnostic::error(&part.place, format!("{} has no junction to fit", part.name)).into()),
+    }
+}
+
+/// A row's test condition as printed: `I_C = 150 mA, V_CE = 1 V, T_j = 25 °C`.
+fn row_text(row: &Row) -> String {
+    let at = &row.at;
+    let zener = matches!(row.quantity, RowQuantity::ZenerVoltage | RowQuantity::ZenerResistance);
+    let biases = [
+        ("I_C", at.i_c, Dimension::AMPERE),
+        ("I_B", at.i_b, Dimension::AMPERE),
+        ("V_CE", at.v_ce, Dimension::VOLT),
+        ("V_CB", at.v_cb, Dimension::VOLT),
+        (if zener { "I_Z" } else { "I_F" }, at.i_f, Dimension::AMPERE),
+        ("V_R", at.v_r, Dimension::VOLT),
+    ];
+    let mut parts: Vec<String> = biases
+        .into_iter()
+        .filter_map(|(name, value, dimension)| {
+            let value = value?;
+            let unit = quantity::preferred_unit(&[value], Kind::of(dimension));
+            Some(format!("{name} = {}", short(value, &unit)))
+        })
+        .collect();
+    parts.push(format!("T_j = {}", short(at.t_j, &quantity::Unit::celsius())));
+    parts.join(", ")
+}
+
+fn current_text(amperes: f64) -> String {
+    short(amperes, &quantity::preferred_unit(&[amperes], Kind::of(Dimension::AMPERE)))
+}
+
+/// A bias value without trailing zeros.
+fn short(value: f64, unit: &quantity::Unit) -> String {
+    let shown = libm::round(unit.from_si(value) * 1e4) / 1e4;
+    format!("{shown}\u{a0}{}", unit.symbol).replace('-', "−")
 }
 
 impl TransistorLaw {
