@@ -194,7 +194,9 @@ pub fn press(sources: &Sources) -> (Result<Vec<u8>, Diagnostics>, Diagnostics) {
         let mut out = Diagnostics::default();
         for error in &errors {
             let mut found = translate(&desk, error);
-            if error.message.contains("image") && !sources.images.is_empty() {
+            if (error.message.contains("image") || error.message.contains("SVG"))
+                && !sources.images.is_empty()
+            {
                 found.expected =
                     Some(format!("images that can be decoded; the note shows {}", sources.images.join(", ")));
             }

@@ -1,3 +1,4 @@
 //! Every test of the project, in one binary.
 
+mod figure;
 mod report;

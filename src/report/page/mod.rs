@@ -95,8 +95,8 @@ fn drawing(index: usize, finding: &crate::study::FigureFinding) -> Value {
         "x": axis(&finding.x), "y": axis(&finding.y),
         "x_ticks": drawn.x_ticks, "y_ticks": drawn.y_ticks,
         "name": drawn.name,
-        "names": drawn.names.iter().map(|(at, name)| json!([at, rich(name)])).collect::<Vec<_>>(),
-        "marks": drawn.marks.iter().map(|(x, y, name)| json!([x, y, rich(name)])).collect::<Vec<_>>(),
+        "names": drawn.names.iter().map(|(at, name)| json!([at, rich(&short(name, 60))])).collect::<Vec<_>>(),
+        "marks": drawn.marks.iter().map(|(x, y, name)| json!([x, y, rich(&short(name, 60))])).collect::<Vec<_>>(),
     })
 }
 
