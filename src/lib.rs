@@ -7,6 +7,7 @@ pub mod diagnostic;
 pub mod markup;
 pub mod quantity;
 pub mod formula;
+pub mod yaml;
 pub mod worksheet;
 pub mod part;
 pub mod device;

@@ -1,5 +1,15 @@
 //! Elements, nodes, connection rules, and the symbols that a circuit offers to formulas.
 
+mod build;
+mod kinds;
+mod rules;
+mod symbols;
+mod values;
+
+pub use build::{Built, build};
+pub use symbols::{Symbol, symbols};
+pub use values::InPlace;
+
 use serde::{Deserialize, Serialize};
 
 use crate::formula::Formula;
@@ -38,6 +48,10 @@ pub struct Element {
     /// Rated dissipation (W) and working voltage (V) written with the element.
     pub rated_power: Option<Formula>,
     pub rated_voltage: Option<Formula>,
+    /// Temperature coefficient of resistance (1/K) written with the element.
+    pub tcr: Option<Formula>,
+    /// What it is, in words.
+    pub about: Option<String>,
     pub place: Place,
 }
 

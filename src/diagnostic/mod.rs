@@ -94,8 +94,9 @@ impl From<Diagnostic> for Diagnostics {
 }
 
 /// The candidate nearest to `word` by optimal string alignment, if it differs by at most a third of the word (at least 1).
+/// A difference in upper and lower case alone counts least.
 pub fn nearest<'a>(word: &str, candidates: impl IntoIterator<Item = &'a str>) -> Option<&'a str> {
-    let allowed = (word.chars().count() / 3).max(1);
+    let allowed = 2 * (word.chars().count() / 3).max(1) + 1;
     candidates
         .into_iter()
         .map(|candidate| (distance(word, candidate), candidate))
@@ -104,10 +105,11 @@ pub fn nearest<'a>(word: &str, candidates: impl IntoIterator<Item = &'a str>) ->
         .map(|(_, candidate)| candidate)
 }
 
-/// Spelling distance; a difference in upper and lower case alone counts half, rounded up once.
+/// Twice the spelling distance without regard to case, and one more where the case differs.
 fn distance(word: &str, candidate: &str) -> usize {
     let folded = strsim::osa_distance(&word.to_lowercase(), &candidate.to_lowercase());
-    if folded == 0 && word != candidate { 1 } else { folded }
+    let case = strsim::osa_distance(word, candidate) > folded;
+    2 * folded + usize::from(case)
 }
 
 /// Renders diagnostics for a terminal: place, line of the source with a caret below, expectation, nearest spelling.

@@ -91,14 +91,14 @@ impl fmt::Display for Dimension {
             match exponent {
                 2 => {}
                 odd if odd % 2 != 0 => write!(f, "^({odd}/2)")?,
-                even => write!(f, "{}", superscript(even / 2))?,
+                even => write!(f, "{}", superscript(i32::from(*even) / 2))?,
             }
         }
         Ok(())
     }
 }
 
-fn superscript(exponent: i8) -> String {
+pub(super) fn superscript(exponent: i32) -> String {
     const DIGITS: [char; 10] = ['⁰', '¹', '²', '³', '⁴', '⁵', '⁶', '⁷', '⁸', '⁹'];
     exponent.to_string().chars().map(|c| c.to_digit(10).map_or('⁻', |digit| DIGITS[digit as usize])).collect()
 }

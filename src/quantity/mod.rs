@@ -5,12 +5,26 @@
 //! 273.15 K between the scales never enters a difference.
 
 mod dimension;
+pub mod iec60062;
+pub mod iec60063;
+mod parse;
+mod print;
+mod source;
+mod unit;
 
 pub use dimension::Dimension;
+pub(crate) use parse::number_length;
+pub use parse::{parse, parse_as};
+pub use print::{Printed, digits_apart, print, significant, text};
+pub use source::parse_source;
+pub use unit::{parse_unit, preferred_unit};
 
 use serde::{Deserialize, Serialize};
 
 use crate::source::Place;
+
+/// Electronvolt in joule (exact; CODATA 2022, SI 2019).
+pub const ELECTRONVOLT: f64 = 1.602_176_634e-19;
 
 /// What sort of quantity a number is.
 #[derive(Clone, Copy, PartialEq, Eq, Debug, Default, Serialize, Deserialize)]

@@ -1,6 +1,23 @@
 //! Extreme value, over any [`Response`].
+//!
+//! Worst-case practice (ECSS-Q-HB-30-01A) asks for the lowest and highest value of a result over everything that varies.
+//! [`extremes`] finds both for all outputs of a response at once and says how each was established:
+//!
+//! * [`Method::Exact`]: nothing varies.
+//! * [`Method::Monotone`]: along every axis that matters, through nominal and through the extreme itself, the result rises or
+//!   falls throughout; so the extreme lies at a vertex, and that vertex was evaluated.
+//! * [`Method::Vertices`]: every vertex was evaluated, each axis was scanned inside from the best one, and no point inside
+//!   was better.
+//! * [`Method::Searched`]: starts from the signs of all sensitivities and from the best points seen for any output; each axis
+//!   and each pair of axes that matter flipped, each axis scanned inside and refined, until nothing moves. This finds what
+//!   single and paired changes can find; it is no proof.
+
+mod evaluate;
+mod search;
 
 use serde::{Deserialize, Serialize};
+
+pub use search::extremes;
 
 /// Why a response has no value at a point.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug, Serialize, Deserialize)]
@@ -8,6 +25,8 @@ use serde::{Deserialize, Serialize};
 pub enum Miss {
     /// The solver found no solution that it could confirm.
     NotConverged,
+    /// A device finds no thermal equilibrium.
+    ThermalRunaway,
     /// The result has no meaning in this state (a forced gain of a transistor that is off).
     Undefined,
     /// A formula gave no finite number.
@@ -33,4 +52,61 @@ pub trait Response: Sync {
     fn outputs(&self) -> usize;
     /// All outputs at one point (one value an axis), and a code that changes when a device changes its region.
     fn eval(&self, at: &[f64], outputs: &mut [Result<f64, Miss>]) -> u64;
+}
+
+/// Which ends of which outputs are wanted; all of them where `wanted` is empty.
+#[derive(Clone, Debug, Default)]
+pub struct Options {
+    /// For each output: whether its minimum and its maximum are wanted.
+    pub wanted: Vec<(bool, bool)>,
+}
+
+/// How an extreme was established; see the module.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum Method {
+    Exact,
+    Monotone,
+    Vertices,
+    Searched,
+}
+
+/// An extreme and the point that gives it.
+#[derive(Clone, PartialEq, Debug)]
+pub struct Extreme {
+    pub value: f64,
+    /// One value an axis.
+    pub at: Vec<f64>,
+    pub method: Method,
+    /// Axes whose change from here moves the output, most first.
+    pub matters: Vec<usize>,
+}
+
+/// Regions of devices at a point of the space.
+#[derive(Clone, PartialEq, Debug)]
+pub struct RegionAt {
+    pub code: u64,
+    pub at: Vec<f64>,
+}
+
+/// What one output does over the space.
+#[derive(Clone, PartialEq, Debug)]
+pub struct Range {
+    pub nominal: Result<f64, Miss>,
+    /// Absent where it was not wanted or the output has no value anywhere.
+    pub min: Option<Extreme>,
+    pub max: Option<Extreme>,
+    /// Axes strictly inside of which an extreme lies.
+    pub interior: Vec<usize>,
+    /// Axes along which the output was seen to rise and to fall.
+    pub non_monotone: Vec<usize>,
+    /// A point of the space at which the output has no value, and why.
+    pub missing: Option<(Miss, Vec<f64>)>,
+    /// The combinations of regions met, each with a point that shows it; the same for all outputs.
+    pub regions: Vec<RegionAt>,
+}
+
+/// Whether a margin lies clear of the numerical error. Solutions are confirmed to 1e-9 of the currents that meet at a node;
+/// `scale` is the size of what is compared, and a millionth of it leaves room for what formulas do with the error.
+pub fn margin_is_decided(margin: f64, scale: f64) -> bool {
+    margin.abs() > 1e-6 * scale.abs()
 }

@@ -1,9 +1,36 @@
 //! text -> Worksheet: head, prose, blocks, recalls, each with its place in the file.
 
+mod acceptance;
+mod basis;
+mod conditions;
+mod derivation;
+mod fence;
+mod figure;
+mod head;
+mod lines;
+mod math;
+mod page;
+mod prose;
+mod read;
+pub mod recall;
+mod records;
+
+pub use basis::origin;
+pub use fence::WORDS;
+pub use read::read;
+
+use crate::diagnostic::Diagnostics;
 use crate::formula::{Formula, Relation};
 use crate::markup::{Align, Math};
 use crate::quantity::{Quantity, Sourced};
 use crate::source::{Digest, Place};
+
+/// Reading a worksheet stops where so many things are wrong with it: it is probably no worksheet at all.
+const ENOUGH: usize = 500;
+
+fn enough(diagnostics: &Diagnostics) -> bool {
+    diagnostics.0.len() >= ENOUGH
+}
 
 #[derive(Clone, Debug)]
 pub struct Worksheet {
@@ -193,6 +220,8 @@ pub struct CriterionLine {
     pub block: usize,
 }
 
+/// There are few of these; a box would only stand in the way of matching.
+#[allow(clippy::large_enum_variant)]
 #[derive(Clone, Debug)]
 pub enum CriterionKind {
     Relation(Relation),
@@ -234,4 +263,23 @@ pub enum FigureKind {
     OutputCharacteristics { designator: Spot<String>, over: Option<Quantity> },
     /// Dissipation allowed over ambient temperature with the operating point.
     PowerDerating { designator: Spot<String> },
+}
+
+impl Worksheet {
+    /// Every part that the circuit names, with the place of each use, in order of writing.
+    pub fn parts_used(&self) -> Vec<&Spot<String>> {
+        const DEVICES: [&str; 4] = ["npn", "pnp", "diode", "zener"];
+        let names_part = |key: &str| key == "part" || DEVICES.contains(&key);
+        self.circuit
+            .iter()
+            .flat_map(|record| &record.fields)
+            .filter(|(key, _)| names_part(&key.value))
+            .map(|(_, value)| value)
+            .collect()
+    }
+
+    /// Paths inside the notebook of every image, each once.
+    pub fn image_paths(&self) -> std::collections::BTreeSet<&str> {
+        self.images.iter().map(|(path, _)| path.as_str()).collect()
+    }
 }

@@ -1,4 +1,10 @@
 //! Every test of the project, in one binary.
 
+mod circuit;
 mod figure;
+mod formula;
+mod quantity;
 mod report;
+mod solve;
+mod worksheet;
+mod yaml;

@@ -175,7 +175,7 @@ pub(super) fn derivation(findings: &Findings) -> Value {
 fn step(number: usize, found: &Step) -> Value {
     let defined = found.symbol.as_ref().map_or(0.0, em);
     let wide = defined + em(&found.symbols).max(em(&found.numbers)) > 0.8 * WIDEST;
-    let result = found.result.value().map(|value| cell::number(value, &found.unit, DIGITS, false));
+    let result = found.result.value().map(|value| cell::number(value, &found.unit, DIGITS));
     let reason = match &found.result {
         crate::quantity::Shown::NotShown(reason) => Some(rich(reason)),
         crate::quantity::Shown::Value(_) => None,
@@ -188,7 +188,9 @@ fn step(number: usize, found: &Step) -> Value {
         "wide": wide,
         "symbols": broken(&found.symbols),
         "numbers": broken(&found.numbers),
-        "result": result.map(|n| json!({"digits": n.digits, "unit": n.unit})),
+        "result": result.map(|n| json!({
+            "math": "number", "digits": n.printed.digits, "exponent": n.printed.exponent, "unit": n.printed.unit,
+        })),
         "reason": reason,
         "holds": found.holds,
         "spoken": aloud(&found.spoken, &found.label),

@@ -16,6 +16,7 @@ use crate::study::Findings;
 use super::cell::{self, DIGITS, Number};
 use super::rich::{rich, symbol};
 use super::{Issue, Status};
+use crate::quantity::preferred_unit;
 
 /// The page data of one note. `images` are the paths of the notebook's images in the order of their virtual files.
 pub(crate) fn page(findings: &Findings, issue: &Issue, moves: Option<&Moves>, images: &[String]) -> Value {
@@ -182,5 +183,5 @@ fn shown(value: &Shown, unit: &Unit) -> Option<Number> {
 
 /// A value of a part record in the coherent unit with a fitting prefix.
 fn plain(value: f64, kind: Kind) -> Number {
-    cell::number(value, &cell::common_unit(kind, [value]), DIGITS, true)
+    cell::given(value, &preferred_unit(&[value], kind), DIGITS)
 }

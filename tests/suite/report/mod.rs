@@ -119,8 +119,8 @@ fn what_a_reviewer_looks_for_is_printed() {
     let all = pdf.all_text();
     for words in [
         "What moved since issue 2",
-        "0.33120001",
-        "0.33120002",
+        "0.331 200 01",
+        "0.331 200 02",
         "Hot surface",
         "температура корпуса буя",
         "напряжение на лампе",

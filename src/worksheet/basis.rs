@@ -1,0 +1,264 @@
+//! `basis` blocks: named values with unit, range or tolerance, and where each comes from.
+
+use std::collections::BTreeMap;
+use std::ops::Range;
+
+use crate::diagnostic::{Diagnostic, Diagnostics};
+use crate::quantity::{self, Origin, Quantity, Source, Sourced};
+use crate::source::Place;
+use crate::yaml::{self, Key, Node, Value};
+
+use super::fence::RawBlock;
+use super::page::Page;
+use super::{BasisEntry, Spot, enough, lines};
+
+const KEYS: [&str; 3] = ["value", "source", "about"];
+const EXAMPLE: &str = "`V_bat: 10.8 to 14.8 V, usually 12.6 V [battery sheet rev 3 p. 4]`";
+
+pub(super) fn read(
+    page: &Page,
+    block: &RawBlock,
+    clauses: &[&str],
+    out: &mut Vec<BasisEntry>,
+    names: &mut BTreeMap<String, Place>,
+    diagnostics: &mut Diagnostics,
+) {
+    let Some(node) = tree(page, block, diagnostics) else { return };
+    let Some(entries) = diagnostics.keep(node.map(&format!("one value a line: {EXAMPLE}"))) else { return };
+    for (key, value) in entries {
+        if enough(diagnostics) {
+            return;
+        }
+        let name = Spot { value: key.name.clone(), place: key.place.clone() };
+        let named = lines::check_name(&name, diagnostics);
+        if let Some(first) = names.get(&name.value) {
+            diagnostics.push(
+                Diagnostic::error(&name.place, format!("`{}` is defined twice", name.value))
+                    .expected(format!("another name; the first stands on line {}", first.line)),
+            );
+        } else {
+            names.insert(name.value.clone(), name.place.clone());
+        }
+        let Some((sourced, description)) = entry(page, value, clauses, diagnostics) else { continue };
+        if named {
+            out.push(BasisEntry { name, sourced, description, block: block.index });
+        }
+    }
+}
+
+/// The YAML tree of a block.
+pub(super) fn tree(page: &Page, block: &RawBlock, diagnostics: &mut Diagnostics) -> Option<Node> {
+    let first_line = page.line(block.content.start) as u32;
+    match yaml::read(page.slice(block.content.clone()), page.file, first_line) {
+        Ok(node) => Some(node),
+        Err(found) => {
+            diagnostics.extend(found);
+            None
+        }
+    }
+}
+
+/// The text of a scalar as it is laid out in the page, so that places inside it are true: without quotes, at the place
+/// of its first character. A scalar over several lines is taken as joined by the YAML reader.
+pub(super) fn scalar(
+    page: &Page,
+    node: &Node,
+    what: &str,
+    diagnostics: &mut Diagnostics,
+) -> Option<Spot<String>> {
+    let text = diagnostics.keep(node.scalar(what))?;
+    let mut place = node.place.clone();
+    let written = page.slice(page.offset(&place)..page.line_range(place.line as usize).end);
+    if written.starts_with(['"', '\'']) {
+        place.column += 1;
+        place.length = place.length.saturating_sub(2);
+    }
+    let indent = text.chars().take_while(|c| c.is_whitespace()).count() as u32;
+    place.column += indent;
+    place.length = place.length.saturating_sub(indent);
+    Some(Spot { value: text.trim().to_owned(), place })
+}
+
+/// Reports what a comma in an unquoted value leaves behind: words that became a key without a value.
+pub(super) fn refuse_loose_words(entries: &[(Key, Node)], diagnostics: &mut Diagnostics) -> bool {
+    let mut loose = false;
+    for (key, value) in entries {
+        let empty = matches!(&value.value, Value::Scalar(text) if text.is_empty());
+        if empty && !lines::is_name(&key.name) {
+            loose = true;
+            diagnostics.push(
+                Diagnostic::error(&key.place, format!("`{}` stands alone after a comma", key.name)).expected(
+                    "quotes round a value that holds a comma: `\"10.8 to 14.8 V, usually 12.6 V\"`",
+                ),
+            );
+        }
+    }
+    loose
+}
+
+fn entry(
+    page: &Page,
+    node: &Node,
+    clauses: &[&str],
+    diagnostics: &mut Diagnostics,
+) -> Option<(Sourced, Option<String>)> {
+    let Value::Map(entries) = &node.value else {
+        return plain_entry(&scalar(page, node, EXAMPLE, diagnostics)?, clauses, diagnostics);
+    };
+    if refuse_loose_words(entries, diagnostics) {
+        return None;
+    }
+    yaml::refuse_unknown_keys(entries, &KEYS, diagnostics);
+    let Some(value) = node.get("value") else {
+        diagnostics.push(
+            Diagnostic::error(&node.place, "the value is missing")
+                .expected("`{value: 4.6 V ± 0.2 V, source: measured 2026-10-02, about: drive voltage}`"),
+        );
+        return None;
+    };
+    let value = scalar(page, value, "a number with its unit", diagnostics)?;
+    let quantity = diagnostics.keep(quantity::parse(&value.value, &value.place))?;
+    let source = match node.get("source") {
+        Some(source) => {
+            let text = scalar(page, source, "where the value comes from", diagnostics)?;
+            Some(source_of(&text, clauses, diagnostics))
+        }
+        None => None,
+    };
+    let about = match node.get("about") {
+        Some(about) => Some(scalar(page, about, "what the value is, in words", diagnostics)?.value),
+        None => None,
+    };
+    Some((Sourced { quantity, source, place: value.place }, about))
+}
+
+/// `quantity -- what it is [where it comes from]`
+fn plain_entry(
+    text: &Spot<String>,
+    clauses: &[&str],
+    diagnostics: &mut Diagnostics,
+) -> Option<(Sourced, Option<String>)> {
+    let parts = split(text, diagnostics)?;
+    let part = |range: &Range<usize>| Spot {
+        value: text.value.get(range.clone()).unwrap_or("").to_owned(),
+        place: text.place.within(&text.value, range.start, range.end),
+    };
+    let value = part(&parts.value);
+    let quantity = diagnostics.keep(quantity::parse(&value.value, &value.place))?;
+    let source = parts.source.as_ref().map(|range| source_of(&part(range), clauses, diagnostics));
+    let description = parts.about.as_ref().map(|range| part(range).value);
+    Some((Sourced { quantity, source, place: value.place }, description))
+}
+
+/// Byte ranges of the parts of a value text.
+pub(super) struct Parts {
+    pub value: Range<usize>,
+    pub about: Option<Range<usize>>,
+    pub source: Option<Range<usize>>,
+}
+
+/// Cuts `quantity -- about [source]`.
+pub(super) fn split(text: &Spot<String>, diagnostics: &mut Diagnostics) -> Option<Parts> {
+    let whole = text.value.as_str();
+    let trimmed = |range: Range<usize>| {
+        let part = whole.get(range.clone()).unwrap_or("");
+        let start = range.start + part.len() - part.trim_start().len();
+        start..start + part.trim().len()
+    };
+    let mut end = whole.len();
+    let mut source = None;
+    if let Some(open) = whole.find('[') {
+        if !whole.ends_with(']') {
+            let place = text.place.within(whole, open, whole.len());
+            diagnostics.push(
+                Diagnostic::error(&place, "the source is not closed, or something follows it")
+                    .expected(format!("the source in square brackets at the very end: {EXAMPLE}")),
+            );
+            return None;
+        }
+        let range = trimmed(open + 1..whole.len() - 1);
+        if range.is_empty() {
+            let place = text.place.within(whole, open, whole.len());
+            diagnostics
+                .push(Diagnostic::error(&place, "the source is empty").expected("`[data sheet rev 3 p. 4]`"));
+            return None;
+        }
+        source = Some(range);
+        end = open;
+    }
+    let mut about = None;
+    if let Some((at, dash)) = [" -- ", " — "].iter().find_map(|dash| Some((whole[..end].find(dash)?, dash)))
+    {
+        about = Some(trimmed(at + dash.len()..end)).filter(|range| !range.is_empty());
+        end = at;
+    }
+    Some(Parts { value: trimmed(0..end), about, source })
+}
+
+/// Reads where a number comes from out of its words.
+pub(super) fn source_of(text: &Spot<String>, clauses: &[&str], diagnostics: &mut Diagnostics) -> Source {
+    let origin = origin(&text.value, clauses);
+    if origin.is_none() {
+        diagnostics.push(
+            Diagnostic::warning(&text.place, "it is not clear where this value comes from; it counts as an assumption")
+                .expected(
+                    "words such as `data sheet ... rev 3 p. 4`, `measured 2026-10-02`, `clause 3.2`, `IEC 60063`, \
+                     `calculated`, `assumed`, `from memory`",
+                ),
+        );
+    }
+    Source { origin: origin.unwrap_or(Origin::Assumption), text: text.value.clone() }
+}
+
+/// What sort of source some words name; weak ones are looked for first, so that nothing weak passes as firm.
+pub fn origin(text: &str, clauses: &[&str]) -> Option<Origin> {
+    let lower = text.to_lowercase();
+    let words: Vec<&str> =
+        lower.split(|c: char| !c.is_alphanumeric()).filter(|word| !word.is_empty()).collect();
+    let says = |stems: &[&str]| words.iter().any(|word| stems.iter().any(|stem| word.starts_with(stem)));
+    let is = |exact: &[&str]| words.iter().any(|word| exact.contains(word));
+    if says(&["assum", "guess", "estimate"]) {
+        return Some(Origin::Assumption);
+    }
+    if is(&["memory"]) {
+        return Some(Origin::Memory);
+    }
+    if says(&["measur"]) {
+        return Some(Origin::Measurement);
+    }
+    if says(&["calculat", "comput", "derived"]) {
+        return Some(Origin::Calculation);
+    }
+    if clauses.iter().any(|clause| text.starts_with(clause)) || says(&["clause", "specif", "require"]) {
+        return Some(Origin::Specification);
+    }
+    if is(&["iec", "iso", "en", "din", "jedec", "ieee", "mil", "ecss"]) || says(&["standard"]) {
+        return Some(Origin::Standard);
+    }
+    if says(&["datasheet", "sheet", "catalog", "rev", "page"]) || is(&["p", "pp", "drawing"]) {
+        return Some(Origin::DataSheet);
+    }
+    None
+}
+
+/// Reads a quantity of a basis value that stands for another one in a condition or a figure; reports another dimension.
+pub(super) fn same_kind(
+    text: &Spot<String>,
+    name: &str,
+    wanted: &Quantity,
+    diagnostics: &mut Diagnostics,
+) -> Option<Quantity> {
+    let quantity = diagnostics.keep(quantity::parse(&text.value, &text.place))?;
+    if quantity.kind != wanted.kind {
+        diagnostics.push(
+            Diagnostic::error(&text.place, format!("`{}` is no value of `{name}`", text.value))
+                .expected(format!("a value in {}, as in the design basis", unit_words(wanted))),
+        );
+        return None;
+    }
+    Some(quantity)
+}
+
+fn unit_words(quantity: &Quantity) -> String {
+    if quantity.unit.symbol.is_empty() { "plain numbers".into() } else { quantity.unit.symbol.clone() }
+}
