@@ -112,8 +112,12 @@ struct Desk<'a> {
 }
 
 impl Desk<'_> {
+    /// The virtual path of a file; packages have none here.
     fn path(id: FileId) -> String {
-        id.vpath().get_without_slash().to_owned()
+        match id.root() {
+            VirtualRoot::Project => id.vpath().get_without_slash().to_owned(),
+            VirtualRoot::Package(_) => String::new(),
+        }
     }
 }
 

@@ -400,3 +400,16 @@ fn an_image_that_cannot_be_decoded_is_named() {
     let expected = errors.0[0].expected.clone().unwrap_or_default();
     assert!(expected.contains("lantern/bench.svg"), "{errors:#?}");
 }
+
+#[test]
+fn many_revisions_leave_the_summary_on_the_first_page() {
+    let mut old = findings();
+    old.note.revisions =
+        (0..40).map(|i| [format!("R{i}"), "2026-01-01".into(), format!("change number {i}")]).collect();
+    let bytes = note(&old, &files());
+    let pdf = Pdf::read(&bytes);
+    let first = pdf.text(1);
+    assert!(first.contains("change number 39") && !first.contains("change number 34"), "{first}");
+    assert!(first.contains("inrush"));
+    assert!((0..40).all(|i| pdf.all_text().contains(&format!("change number {i}"))));
+}
