@@ -413,3 +413,27 @@ fn many_revisions_leave_the_summary_on_the_first_page() {
     assert!(first.contains("inrush"));
     assert!((0..40).all(|i| pdf.all_text().contains(&format!("change number {i}"))));
 }
+
+#[test]
+fn a_block_inside_a_list_is_set_once_behind_it() {
+    let mut nested = findings();
+    nested.body = vec![
+        Flow::List {
+            ordered: None,
+            items: vec![vec![Flow::Placed { word: "figure".into(), index: 2 }], vec![]],
+        },
+        Flow::Table { align: vec![], head: vec![], rows: vec![] },
+        Flow::Placed { word: "unheard of".into(), index: 7 },
+        Flow::Image { path: "not/in/the/notebook.png".into(), alt: String::new(), caption: vec![] },
+    ];
+    let bytes = note(&nested, &files());
+    let all = Pdf::read(&bytes).all_text();
+    assert_eq!(all.matches("Gain of Q1 over collector current").count(), 1);
+    assert!(all.contains("notebook.png is missing"));
+    // What the prose does not place is printed all the same.
+    for words in
+        ["Values of the design basis", "Transfer curve of the switch", "base current", "collector lamp"]
+    {
+        assert!(all.contains(words), "{words}");
+    }
+}
