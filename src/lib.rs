@@ -9,6 +9,7 @@ pub mod quantity;
 pub mod formula;
 pub mod yaml;
 pub mod worksheet;
+pub mod settings;
 pub mod part;
 pub mod device;
 pub mod fit;

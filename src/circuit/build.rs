@@ -7,10 +7,10 @@ use crate::formula::Formula;
 use crate::part::PartKind;
 use crate::quantity::{Dimension, Kind};
 use crate::source::Place;
-use crate::worksheet::{Record, Spot};
+use crate::worksheet::{Record, Spot, source_of};
 
 use super::kinds::{COMMON_KEYS, KINDS, KindRule, part_words};
-use super::values::{InPlace, Reader, Wanted, source};
+use super::values::{InPlace, Reader, Wanted};
 use super::{Element, ElementKind, Network, rules};
 
 /// A circuit block as a network.
@@ -154,7 +154,7 @@ impl Builder<'_> {
         let letters = key.value.trim_end_matches(|c: char| !c.is_alphabetic());
         let letters = letters.split(|c: char| c.is_ascii_digit()).next().unwrap_or("");
         if !rule.letters.contains(&letters) {
-            let message = format!("`{}` is an unusual designator for a {}", key.value, rule.words);
+            let message = format!("`{}` is an unusual designator for {}", key.value, rule.one());
             self.diagnostics.push(
                 Diagnostic::warning(&key.place, message)
                     .expected(format!("a number after {}", rule.letters.join(" or "))),
@@ -171,7 +171,7 @@ impl Builder<'_> {
         for (key, _) in &record.fields {
             if !known.contains(&key.value.as_str()) {
                 self.diagnostics.push(
-                    Diagnostic::error(&key.place, format!("a {} has no `{}`", rule.words, key.value))
+                    Diagnostic::error(&key.place, format!("{} has no `{}`", rule.one(), key.value))
                         .expected(format!("one of {}", known.join(", ")))
                         .nearest(&key.value, known.iter().copied()),
                 );
@@ -273,7 +273,7 @@ impl Builder<'_> {
             }
             None => {}
         }
-        let source = field(record, "source").map(|text| source(text, &mut self.diagnostics));
+        let source = field(record, "source").map(|text| source_of(text, &[], &mut self.diagnostics));
         let mut reader = Reader {
             basis: self.basis,
             source,

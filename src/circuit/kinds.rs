@@ -168,6 +168,14 @@ pub(super) const KINDS: [KindRule; 12] = [
     },
 ];
 
+impl KindRule {
+    /// The kind in words with its article.
+    pub fn one(&self) -> String {
+        let article = if self.words.starts_with(['N', 'i']) { "an" } else { "a" };
+        format!("{article} {}", self.words)
+    }
+}
+
 /// The rule of a kind.
 pub(super) fn rule(kind: ElementKind) -> Option<&'static KindRule> {
     KINDS.iter().find(|rule| rule.kind == kind)

@@ -4,9 +4,8 @@ use std::collections::BTreeMap;
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::formula::{Expr, Formula};
-use crate::quantity::{self, Dimension, Kind, Origin, Quantity, Source, Sourced, Spread};
-use crate::source::Place;
-use crate::worksheet::{Spot, origin};
+use crate::quantity::{self, Dimension, Kind, Quantity, Source, Sourced, Spread};
+use crate::worksheet::{Spot, quantity_as};
 
 /// A value written with an element: an input named like its designator (`R1`) or after what it is (`DS1.R_cold`).
 #[derive(Clone, PartialEq, Debug)]
@@ -58,11 +57,11 @@ impl Reader<'_> {
         if !looks_like_number(&text.value) {
             return self.formula(text, wanted);
         }
-        match quantity::parse(&text.value, &text.place) {
+        match quantity_as(text, wanted.kind) {
             Ok(quantity) => self.in_place(quantity, text, symbol, wanted),
             // `2 * R_1` begins with a number too.
-            Err(found) => match crate::formula::Formula::parse(&text.value, &text.place) {
-                Ok(formula) if has_names(&formula.expr) => self.checked(formula, wanted),
+            Err(found) => match Formula::parse(&text.value, &text.place) {
+                Ok(formula) if !formula.names().is_empty() => self.checked(formula, wanted),
                 _ => {
                     self.diagnostics.push(found);
                     None
@@ -74,7 +73,7 @@ impl Reader<'_> {
     /// A rating: one number in place, which is a limit and no input, or a formula over the basis.
     pub fn rating(&mut self, text: &Spot<String>, wanted: Wanted) -> Option<Formula> {
         if looks_like_number(&text.value) {
-            let quantity = match quantity::parse(&text.value, &text.place) {
+            let quantity = match quantity_as(text, wanted.kind) {
                 Ok(quantity) => quantity,
                 Err(found) => {
                     self.diagnostics.push(found);
@@ -182,7 +181,7 @@ impl Reader<'_> {
     }
 
     fn formula(&mut self, text: &Spot<String>, wanted: Wanted) -> Option<Formula> {
-        match crate::formula::Formula::parse(&text.value, &text.place) {
+        match Formula::parse(&text.value, &text.place) {
             Ok(formula) => self.checked(formula, wanted),
             Err(found) => {
                 self.diagnostics.extend(found);
@@ -193,10 +192,8 @@ impl Reader<'_> {
 
     /// Checks that a formula names the design basis only, and what it comes to.
     fn checked(&mut self, formula: Formula, wanted: Wanted) -> Option<Formula> {
-        let mut names = Vec::new();
-        collect(&formula.expr, &mut names);
         let mut right = true;
-        for (name, place) in names {
+        for (name, place) in formula.names() {
             if !self.basis.contains_key(name) {
                 right = false;
                 self.diagnostics.push(
@@ -223,23 +220,6 @@ impl Reader<'_> {
             }
         }
     }
-}
-
-/// Where the value of a record comes from, out of its `source` text.
-pub(super) fn source(text: &Spot<String>, diagnostics: &mut Diagnostics) -> Source {
-    let found = origin(&text.value, &[]);
-    if found.is_none() {
-        diagnostics.push(
-            Diagnostic::warning(
-                &text.place,
-                "it is not clear where this value comes from; it counts as an assumption",
-            )
-            .expected(
-                "words such as `data sheet rev 3 p. 4`, `measured 2026-10-02`, `assumed`, `from memory`",
-            ),
-        );
-    }
-    Source { origin: found.unwrap_or(Origin::Assumption), text: text.value.clone() }
 }
 
 fn literal(quantity: &Quantity, text: &Spot<String>) -> Formula {
@@ -275,28 +255,4 @@ fn split_pair(text: &Spot<String>) -> Option<(Spot<String>, Spot<String>)> {
         Spot { value: part.to_owned(), place: text.place.within(whole, from, from + part.len()) }
     };
     Some((cut(0, at), cut(at, whole.len())))
-}
-
-fn has_names(expr: &Expr) -> bool {
-    let mut names: Vec<(&str, &Place)> = Vec::new();
-    collect(expr, &mut names);
-    !names.is_empty()
-}
-
-fn collect<'e>(expr: &'e Expr, names: &mut Vec<(&'e str, &'e Place)>) {
-    match expr {
-        Expr::Literal { .. } => {}
-        Expr::Name { name, place } => names.push((name, place)),
-        Expr::Negate(inner) => collect(inner, names),
-        Expr::Binary { left, right, .. } => {
-            collect(left, names);
-            collect(right, names);
-        }
-        Expr::Call { arguments, .. } => arguments.iter().for_each(|argument| collect(argument, names)),
-        Expr::Choice { condition, then, otherwise, .. } => {
-            for side in [&condition.left, &condition.right, then.as_ref(), otherwise.as_ref()] {
-                collect(side, names);
-            }
-        }
-    }
 }

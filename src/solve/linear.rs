@@ -27,6 +27,8 @@ pub(super) struct Elimination {
     /// Entries right of each pivot: where those of unknown k end, column, value.
     ends: Vec<usize>,
     entries: Vec<(usize, f64)>,
+    /// What stands in the rows that are left, right of the `n` unknowns.
+    pub rest: Vec<f64>,
 }
 
 impl Elimination {
@@ -36,13 +38,9 @@ impl Elimination {
         self.a.resize(rows * width, 0.0);
     }
 
+    #[inline]
     pub fn add(&mut self, row: usize, column: usize, value: f64) {
         self.a[row * self.width + column] += value;
-    }
-
-    /// Coefficient after the elimination.
-    pub fn at(&self, row: usize, column: usize) -> f64 {
-        self.a[row * self.width + column]
     }
 
     /// Gaussian elimination with partial pivoting of the `n` unknowns.
@@ -85,6 +83,10 @@ impl Elimination {
         }
         self.left.clear();
         self.left.extend((0..rows).filter(|&r| !self.used[r]));
+        self.rest.clear();
+        for &row in &self.left {
+            self.rest.extend_from_slice(&self.a[row * width + n..][..width - n]);
+        }
         self.entries.clear();
         self.ends.clear();
         for k in 0..n {

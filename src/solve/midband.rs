@@ -37,7 +37,7 @@ impl Plan {
         };
         // v_from - v_to - R i = 1: an e.m.f. of one volt.
         scratch.right[self.nodes - 1 + current] = 1.0;
-        self.solve_linearised(scratch)?;
+        self.determined(scratch)?;
         let gain: Vec<f64> = (0..self.nodes).map(|node| self.response(scratch, node)).collect();
         let i = -scratch.step[current];
         let across = if *ohms == 0.0 { 1.0 } else { gain[from] - gain[to] };
@@ -66,8 +66,33 @@ impl Plan {
         }
         // One ampere into the node; the equations count currents out of it.
         scratch.right[node - 1] = 1.0;
-        self.solve_linearised(scratch)?;
+        self.determined(scratch)?;
         Ok(self.response(scratch, node))
+    }
+
+    /// Solves for the right side in `scratch`, unless rounding alone would move the result: then the circuit does not
+    /// determine it (a collector that sees nothing but a reverse biased junction). One ohm relates volts to amperes where
+    /// next to no voltage moves.
+    fn determined(&self, scratch: &mut Scratch) -> Result<(), Failure> {
+        scratch.residual.clone_from(&scratch.right);
+        self.solve_linearised(scratch)?;
+        let (n, m) = (self.unknowns(), self.ports);
+        let most = |values: &[f64]| values.iter().fold(0.0, |most: f64, x| most.max(x.abs()));
+        let volts = most(&scratch.step[self.linear..n + m]).max(most(&scratch.residual[self.nodes - 1..]));
+        let amperes = most(&scratch.step[..self.linear])
+            .max(most(&scratch.step[n + m..]))
+            .max(most(&scratch.residual[..self.nodes - 1]));
+        let mut sign = f64::EPSILON;
+        for (row, right) in scratch.right.iter_mut().enumerate() {
+            *right = sign * if row < self.nodes - 1 { amperes } else { volts };
+            sign = -sign;
+        }
+        self.solve_linearised(scratch)?;
+        if most(&scratch.step[self.linear..n]) > 1e-6 * volts.max(amperes) {
+            return Err(Failure::Singular);
+        }
+        scratch.right.clone_from(&scratch.residual);
+        self.solve_linearised(scratch)
     }
 
     fn response(&self, scratch: &Scratch, node: Node) -> f64 {
@@ -97,6 +122,7 @@ impl Plan {
                 }
             }
         }
+        scratch.right.fill(0.0);
         self.eliminate(scratch)
     }
 }

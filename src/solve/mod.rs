@@ -17,6 +17,7 @@
 //! `start` is the `solution` of a neighbouring operating point (or `None`); the caller always gives it, so that the
 //! bits of a result depend on the arguments alone.
 
+mod junction;
 mod linear;
 mod midband;
 mod newton;

@@ -1,10 +1,11 @@
 //! Newton's method on the junction voltages, with a limit on each junction's step; source and conductance stepping.
 
+use super::junction::{Device, Law};
 use super::linear::solve_small;
 use super::plan::{Plan, Scratch, Slot};
-use super::{Attempt, Branch, Failure, Probe, Solution};
+use super::{Attempt, Failure, Solution};
 use crate::circuit::Node;
-use crate::device::{diode, transistor};
+use crate::device::transistor;
 
 /// Current residual at a node, as a share of the largest current into it, above which a solution does not count.
 pub(super) const CURRENT_RESIDUAL: f64 = 1e-9;
@@ -20,129 +21,6 @@ const STAGES: usize = 120;
 /// Share of a junction voltage below which a step only goes to its lower digits (see `Scratch::low`), where currents are
 /// straight lines: otherwise the rounding of the exponential's argument would be thrown anew with every step.
 const FINE: f64 = 100.0 * f64::EPSILON;
-/// Junction current (A) at which a junction counts as entered by [`Limit`].
-const ENTRY_CURRENT: f64 = 1e-6;
-
-/// A device at its junction temperature.
-#[derive(Clone, Copy, Debug)]
-pub(super) struct Device {
-    /// -1 for PNP.
-    pub sign: f64,
-    pub law: Law,
-    /// In series with collector, base, emitter; or with a diode (first).
-    pub resistances: [f64; 3],
-    pub probe: Probe,
-    pub limits: [Limit; 2],
-}
-
-#[derive(Clone, Copy, Debug)]
-pub(super) enum Law {
-    /// In state open: no current.
-    Open,
-    Transistor(transistor::AtTemperature),
-    Diode(diode::AtTemperature),
-}
-
-/// Bounds a Newton step of a junction voltage.
-///
-/// A tangent to an exponential promises far too much voltage when it is followed upwards: at `v` with current i and slope
-/// i / n, a step d asks for the current i (1 + d / n), and the voltage that carries this current is v + n ln(1 + d / n).
-/// That is where the step goes. A junction that does not conduct yet has no useful tangent: it goes to its `entry`, the
-/// voltage of a small current, and from there on as before. (Nagel 1975 gives the history of such limits.)
-#[derive(Clone, Copy, PartialEq, Debug)]
-pub(super) struct Limit {
-    /// Voltage (V) of e-fold current, forward; entry voltage forward.
-    pub fold: f64,
-    pub entry: f64,
-    /// The same for breakdown, counted in reverse voltage; infinite entry without breakdown.
-    pub breakdown_fold: f64,
-    pub breakdown_entry: f64,
-}
-
-impl Limit {
-    const NONE: Limit =
-        Limit { fold: 1.0, entry: f64::INFINITY, breakdown_fold: 1.0, breakdown_entry: f64::INFINITY };
-
-    fn junction(saturation_current: f64, fold: f64) -> Limit {
-        let entry = if saturation_current > 0.0 {
-            (fold * libm::log(ENTRY_CURRENT / saturation_current)).max(0.0)
-        } else {
-            f64::INFINITY
-        };
-        Limit { fold, entry, ..Limit::NONE }
-    }
-
-    /// The voltage to go to, where Newton's method would go from `from` to `to`.
-    fn apply(&self, from: f64, to: f64) -> f64 {
-        if to > self.entry || from > self.entry {
-            one_way(from, to, self.fold, self.entry)
-        } else if -to > self.breakdown_entry || -from > self.breakdown_entry {
-            -one_way(-from, -to, self.breakdown_fold, self.breakdown_entry)
-        } else {
-            to
-        }
-    }
-}
-
-fn one_way(from: f64, to: f64, fold: f64, entry: f64) -> f64 {
-    let step = to - from;
-    if step.abs() <= 2.0 * fold {
-        to
-    } else if step < 0.0 {
-        // Downwards the tangent is safe to the point where the junction stops conducting, not beyond.
-        to.max(entry - 2.0 * fold)
-    } else if from < entry {
-        to.min(entry)
-    } else {
-        from + fold * libm::log(1.0 + step / fold)
-    }
-}
-
-impl Device {
-    /// The device of a branch at junction temperature `t_j` (K).
-    pub fn prepare(branch: &Branch, t_j: f64) -> Device {
-        let open = Device {
-            sign: 1.0,
-            law: Law::Open,
-            resistances: [0.0; 3],
-            probe: Probe::default(),
-            limits: [Limit::NONE; 2],
-        };
-        match branch {
-            Branch::Transistor { pnp, parameters, probe, .. } => {
-                let at = parameters.at(t_j);
-                let p = &at.parameters;
-                let fold = p.emission_coefficient * at.thermal_voltage;
-                let limit = Limit::junction(p.saturation_current, fold);
-                Device {
-                    sign: if *pnp { -1.0 } else { 1.0 },
-                    law: Law::Transistor(at),
-                    resistances: [p.collector_resistance, p.base_resistance, p.emitter_resistance],
-                    probe: *probe,
-                    limits: [limit; 2],
-                }
-            }
-            Branch::Diode { parameters, .. } => {
-                let at = parameters.at(t_j);
-                let p = &at.parameters;
-                let fold = p.emission_coefficient * at.thermal_voltage;
-                let mut limit = Limit::junction(p.saturation_current, fold);
-                if p.breakdown_voltage.is_finite() {
-                    limit.breakdown_fold = p.breakdown_slope;
-                    limit.breakdown_entry = p.breakdown_voltage
-                        - p.breakdown_slope * libm::log(p.breakdown_current / ENTRY_CURRENT).max(0.0);
-                }
-                Device {
-                    law: Law::Diode(at),
-                    resistances: [p.series_resistance, 0.0, 0.0],
-                    limits: [limit; 2],
-                    ..open
-                }
-            }
-            _ => open,
-        }
-    }
-}
 
 /// How far sources are raised, and what stands beside every junction.
 #[derive(Clone, Copy, Debug)]
@@ -261,7 +139,7 @@ impl Plan {
 
     /// Newton's method from the state in `scratch`; the estimated error of any voltage when it is accepted.
     fn newton(&self, scratch: &mut Scratch, stage: Stage) -> Result<f64, Failure> {
-        let (n, m) = (self.unknowns(), self.ports);
+        let n = self.unknowns();
         let mut moved = f64::INFINITY;
         for _ in 0..stage.steps {
             self.evaluate(scratch, stage.sources, stage.conductance);
@@ -310,7 +188,6 @@ impl Plan {
                     scratch.low[port + j] = if allowed == to { (from - to) + step } else { 0.0 };
                 }
             }
-            debug_assert!(scratch.u.len() == m);
             if !moved.is_finite() {
                 return Err(Failure::NotConverged { residual: f64::INFINITY });
             }
@@ -359,59 +236,31 @@ impl Plan {
         let (n, m) = (self.unknowns(), self.ports);
         let Scratch { elimination, right, step, jacobian, small, slopes, .. } = scratch;
         elimination.reduce(right);
-        small.clear();
-        jacobian.clear();
-        for &row in &elimination.left {
-            small.push(right[row]);
-            for j in 0..m {
-                jacobian.push(elimination.at(row, n + j));
-            }
-        }
         for (r, &row) in elimination.left.iter().enumerate() {
+            small[r] = right[row];
             let line = &mut jacobian[r * m..][..m];
-            self.each_port(|j, partner| {
-                line[j] += elimination.at(row, n + m + j) * slopes[2 * j];
-                if let Some(other) = partner {
-                    line[other] += elimination.at(row, n + m + j) * slopes[2 * j + 1];
-                }
-            });
+            let (by_voltage, by_current) = elimination.rest[2 * r * m..][..2 * m].split_at(m);
+            line.copy_from_slice(by_voltage);
+            for (j, &partner) in self.partners.iter().enumerate() {
+                line[j] += by_current[j] * slopes[2 * j];
+                line[partner] += by_current[j] * slopes[2 * j + 1];
+            }
         }
         solve_small(jacobian, small)?;
         step[n..n + m].copy_from_slice(small);
-        self.each_port(|j, partner| {
-            let other = partner.map_or(0.0, |other| slopes[2 * j + 1] * small[other]);
-            step[n + m + j] = slopes[2 * j] * small[j] + other;
-        });
+        for (j, &partner) in self.partners.iter().enumerate() {
+            step[n + m + j] = slopes[2 * j] * small[j] + slopes[2 * j + 1] * small[partner];
+        }
         elimination.substitute(right, step);
         Ok(())
-    }
-
-    /// Calls `f` with each junction and, for a transistor, the other one.
-    fn each_port(&self, mut f: impl FnMut(usize, Option<usize>)) {
-        for slot in &self.slots {
-            match *slot {
-                Slot::Two { .. } => {}
-                Slot::Diode { port, .. } => f(port, None),
-                Slot::Transistor { port, .. } => {
-                    f(port, Some(port + 1));
-                    f(port + 1, Some(port));
-                }
-            }
-        }
     }
 
     /// All equations at the state in `scratch`, from the device laws: residuals, the size of their largest terms, the
     /// sum of currents out of each node, junction currents and their slopes.
     pub(super) fn evaluate(&self, scratch: &mut Scratch, sources: f64, conductance: f64) {
-        let (n, m, rows) = (self.unknowns(), self.ports, self.unknowns() + self.ports);
-        fill(&mut scratch.residual, rows);
-        fill(&mut scratch.largest, rows);
-        fill(&mut scratch.right, rows);
-        fill(&mut scratch.step, n + 2 * m);
-        fill(&mut scratch.node_sum, self.nodes);
-        fill(&mut scratch.node_largest, self.nodes);
-        scratch.i.resize(m, 0.0);
-        scratch.slopes.resize(2 * m, 0.0);
+        let n = self.unknowns();
+        scratch.node_sum.fill(0.0);
+        scratch.node_largest.fill(0.0);
         let Scratch {
             residual, largest, node_sum, node_largest, y, u, low, i, slopes, prepared, laws, ..
         } = scratch;
@@ -447,6 +296,7 @@ impl Plan {
                         _ => (0.0, 0.0),
                     };
                     slopes[2 * port] = slope + conductance;
+                    slopes[2 * port + 1] = 0.0;
                     i[port] = flow + conductance * u[port] + slopes[2 * port] * low[port];
                     out_of(anode, i[port]);
                     out_of(cathode, -i[port]);
@@ -487,6 +337,24 @@ impl Plan {
         }
         residual[..self.nodes - 1].copy_from_slice(&node_sum[1..]);
         largest[..self.nodes - 1].copy_from_slice(&node_largest[1..]);
+    }
+}
+
+/// Storage for networks of this size, all zero.
+pub(super) fn size(plan: &Plan, scratch: &mut Scratch) {
+    let (n, m, rows) = (plan.unknowns(), plan.ports, plan.unknowns() + plan.ports);
+    if scratch.sized != (plan.nodes, n, m) {
+        fill(&mut scratch.residual, rows);
+        fill(&mut scratch.largest, rows);
+        fill(&mut scratch.right, rows);
+        fill(&mut scratch.step, n + 2 * m);
+        fill(&mut scratch.node_sum, plan.nodes);
+        fill(&mut scratch.node_largest, plan.nodes);
+        fill(&mut scratch.i, m);
+        fill(&mut scratch.slopes, 2 * m);
+        fill(&mut scratch.jacobian, m * m);
+        fill(&mut scratch.small, m);
+        scratch.sized = (plan.nodes, n, m);
     }
 }
 

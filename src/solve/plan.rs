@@ -8,8 +8,9 @@
 //! Unknowns: y = currents of two-terminal elements, then node voltages; u = junction voltages. Equations: the current
 //! rule at each node but ground, the law of each two-terminal element, one voltage equation a junction.
 
+use super::junction::Device;
 use super::linear::Elimination;
-use super::newton::Device;
+use super::newton::size;
 use super::{Branch, ElementPoint, Failure, OperatingPoint, Solution};
 use crate::circuit::{ElementKind, Network, Node};
 
@@ -51,11 +52,15 @@ pub struct Plan {
     pub(super) linear: usize,
     pub(super) ports: usize,
     pub(super) devices: usize,
+    /// The other junction of the same transistor, of each junction; of a diode the junction itself.
+    pub(super) partners: Vec<usize>,
 }
 
 /// Working storage of one thread; after the first solution nothing more is allocated.
 #[derive(Clone, Debug, Default)]
 pub struct Scratch {
+    /// Nodes, unknowns y and junctions that the storage is sized for.
+    pub(super) sized: (usize, usize, usize),
     pub(super) elimination: Elimination,
     /// Law of each two-terminal element: `alpha (v_from - v_to) - rho i = epsilon`.
     pub(super) laws: Vec<[f64; 3]>,
@@ -130,6 +135,7 @@ impl Plan {
             linear: 0,
             ports: 0,
             devices: 0,
+            partners: Vec::new(),
         };
         for (element, topology) in elements.iter().enumerate() {
             if topology.terminals.iter().any(|&node| node >= plan.nodes) {
@@ -142,11 +148,13 @@ impl Plan {
                     Slot::Two { from, to, current: plan.linear - 1 }
                 }
                 (Class::Diode, &[anode, cathode]) => {
+                    plan.partners.push(port);
                     plan.ports += 1;
                     plan.devices += 1;
                     Slot::Diode { anode, cathode, port, device }
                 }
                 (Class::Transistor, &[collector, base, emitter]) => {
+                    plan.partners.extend([port + 1, port]);
                     plan.ports += 2;
                     plan.devices += 1;
                     Slot::Transistor { collector, base, emitter, port, device }
@@ -185,11 +193,13 @@ impl Plan {
     }
 
     /// Number of unknowns y.
+    #[inline]
     pub(super) fn unknowns(&self) -> usize {
         self.linear + self.nodes - 1
     }
 
     /// Column of a node's voltage among y; `None` for ground.
+    #[inline]
     pub(super) fn column(&self, node: Node) -> Option<usize> {
         node.checked_sub(1).map(|k| self.linear + k)
     }
@@ -199,6 +209,7 @@ impl Plan {
         if branches.len() != self.slots.len() {
             return Err(Failure::Unfit { element: branches.len().min(self.slots.len()) });
         }
+        size(self, scratch);
         scratch.laws.clear();
         for (element, (slot, branch)) in self.slots.iter().zip(branches).enumerate() {
             let law = match (slot, *branch) {

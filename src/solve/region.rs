@@ -140,7 +140,7 @@ impl Bias {
             let (forced, at_edge) = gain_at(&self.at, i_c, u_bc, near)?;
             near = at_edge;
             let off = libm::log((gain / forced - 1.0).max(1e-12)) - target;
-            if off.abs() < 1e-9 || high - low < 1e-12 {
+            if off.abs() < 1e-7 || high - low < 1e-12 {
                 let p = &self.at.parameters;
                 let i_b = i_c / forced;
                 let drops = p.collector_resistance * i_c + p.emitter_resistance * (i_c + i_b);
@@ -167,11 +167,17 @@ impl Bias {
         Some(match region {
             Region::Off => -emitter.max(collector),
             Region::Reverse => collector.min(-emitter),
-            Region::Saturated if emitter < 0.0 => emitter,
+            Region::Saturated if emitter < 0.0 => {
+                emitter.min(self.overdrive().map_or(0.0, |n| n.min(1.0) - EDGE_OF_SATURATION))
+            }
             Region::Saturated if self.u_bc <= 0.0 => self.overdrive()?.min(1.0) - EDGE_OF_SATURATION,
             Region::Saturated => self.overdrive()? - EDGE_OF_SATURATION,
             Region::Active if self.i_c.max(self.i_b) <= 0.0 => emitter,
-            Region::Active => emitter.min(self.v_ce - self.edge_voltage()?),
+            Region::Active => match self.edge_voltage() {
+                Some(edge) => emitter.min(self.v_ce - edge),
+                // Too little current to have an edge.
+                None => (emitter < 0.0).then_some(emitter)?,
+            },
         })
     }
 }
@@ -194,7 +200,7 @@ fn gain_at(at: &transistor::AtTemperature, i_c: f64, u_bc: f64, near: f64) -> Op
         if !step.is_finite() {
             return None;
         }
-        if step.abs() < 1e-13 {
+        if step.abs() < 1e-10 {
             let gain = now.i_c / now.i_b;
             return (now.i_b > 0.0 && gain.is_finite()).then_some((gain, u_be));
         }
@@ -228,7 +234,8 @@ pub fn overdrive(branch: &Branch, point: &ElementPoint) -> Option<f64> {
 
 /// How far a transistor is inside a region (positive) or outside (negative), continuous across the edge:
 ///
-/// - saturated: overdrive less [`EDGE_OF_SATURATION`]; while the emitter junction is off, V_BE less cut-in voltage (V);
+/// - saturated: overdrive less [`EDGE_OF_SATURATION`]; while the emitter junction is off, no more than V_BE less cut-in
+///   voltage (V);
 /// - active: the smaller of V_BE less cut-in voltage, and V_CE less the V_CE at which this collector current is at the
 ///   edge of saturation (V);
 /// - off: cut-in voltage less the greater of V_BE and V_BC (V);

@@ -6,7 +6,8 @@
 //! temperatures are followed upwards from ambient as a warming device would go through them, to the first equilibrium or
 //! out of bounds.
 
-use super::newton::{Device, note};
+use super::junction::Device;
+use super::newton::note;
 use super::plan::{Plan, Scratch, Slot};
 use super::{Attempt, Branch, ElementPoint, Failure, OperatingPoint, Solution, Thermal};
 

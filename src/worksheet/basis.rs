@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 use std::ops::Range;
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
-use crate::quantity::{self, Origin, Quantity, Source, Sourced};
+use crate::quantity::{self, Kind, Origin, Quantity, Source, Sourced};
 use crate::source::Place;
 use crate::yaml::{self, Key, Node, Value};
 
@@ -103,7 +103,7 @@ fn entry(
     diagnostics: &mut Diagnostics,
 ) -> Option<(Sourced, Option<String>)> {
     let Value::Map(entries) = &node.value else {
-        return plain_entry(&scalar(page, node, EXAMPLE, diagnostics)?, clauses, diagnostics);
+        return basis_text(&scalar(page, node, EXAMPLE, diagnostics)?, clauses, diagnostics);
     };
     if refuse_loose_words(entries, diagnostics) {
         return None;
@@ -132,8 +132,9 @@ fn entry(
     Some((Sourced { quantity, source, place: value.place }, about))
 }
 
-/// `quantity -- what it is [where it comes from]`
-fn plain_entry(
+/// Reads the text of a basis value, `quantity -- what it is [where it comes from]`: the quantity with its source, and what
+/// it is.
+pub fn basis_text(
     text: &Spot<String>,
     clauses: &[&str],
     diagnostics: &mut Diagnostics,
@@ -195,50 +196,35 @@ pub(super) fn split(text: &Spot<String>, diagnostics: &mut Diagnostics) -> Optio
     Some(Parts { value: trimmed(0..end), about, source })
 }
 
-/// Reads where a number comes from out of its words.
-pub(super) fn source_of(text: &Spot<String>, clauses: &[&str], diagnostics: &mut Diagnostics) -> Source {
-    let origin = origin(&text.value, clauses);
-    if origin.is_none() {
+/// Reads where a number comes from; `clauses` are those of the head, which count as the specification. Words that do not say
+/// where a value comes from are warned of, because it then counts as an assumption.
+pub fn source_of(text: &Spot<String>, clauses: &[&str], diagnostics: &mut Diagnostics) -> Source {
+    let mut source = quantity::parse_source(&text.value);
+    if clauses.iter().any(|clause| text.value.starts_with(clause)) {
+        source.origin = Origin::Specification;
+    }
+    let lower = text.value.to_lowercase();
+    let says_so = ["assum", "guess", "estimat"].iter().any(|stem| lower.contains(stem));
+    if source.origin == Origin::Assumption && !says_so {
         diagnostics.push(
-            Diagnostic::warning(&text.place, "it is not clear where this value comes from; it counts as an assumption")
-                .expected(
-                    "words such as `data sheet ... rev 3 p. 4`, `measured 2026-10-02`, `clause 3.2`, `IEC 60063`, \
-                     `calculated`, `assumed`, `from memory`",
-                ),
+            Diagnostic::warning(
+                &text.place,
+                "it is not clear where this value comes from; it counts as an assumption",
+            )
+            .expected(
+                "words such as `data sheet rev 3 p. 4`, `measured 2026-10-02`, `clause 3.2`, `IEC 60063`, \
+                 `calculated`, `assumed`, `from memory`",
+            ),
         );
     }
-    Source { origin: origin.unwrap_or(Origin::Assumption), text: text.value.clone() }
+    source
 }
 
-/// What sort of source some words name; weak ones are looked for first, so that nothing weak passes as firm.
-pub fn origin(text: &str, clauses: &[&str]) -> Option<Origin> {
-    let lower = text.to_lowercase();
-    let words: Vec<&str> =
-        lower.split(|c: char| !c.is_alphanumeric()).filter(|word| !word.is_empty()).collect();
-    let says = |stems: &[&str]| words.iter().any(|word| stems.iter().any(|stem| word.starts_with(stem)));
-    let is = |exact: &[&str]| words.iter().any(|word| exact.contains(word));
-    if says(&["assum", "guess", "estimate"]) {
-        return Some(Origin::Assumption);
-    }
-    if is(&["memory"]) {
-        return Some(Origin::Memory);
-    }
-    if says(&["measur"]) {
-        return Some(Origin::Measurement);
-    }
-    if says(&["calculat", "comput", "derived"]) {
-        return Some(Origin::Calculation);
-    }
-    if clauses.iter().any(|clause| text.starts_with(clause)) || says(&["clause", "specif", "require"]) {
-        return Some(Origin::Specification);
-    }
-    if is(&["iec", "iso", "en", "din", "jedec", "ieee", "mil", "ecss"]) || says(&["standard"]) {
-        return Some(Origin::Standard);
-    }
-    if says(&["datasheet", "sheet", "catalog", "rev", "page"]) || is(&["p", "pp", "drawing"]) {
-        return Some(Origin::DataSheet);
-    }
-    None
+/// Reads a quantity whose kind is known from where it stands, so that `4k7` may be a resistance. Another kind is left to the
+/// caller, who can say what was expected.
+pub fn quantity_as(text: &Spot<String>, kind: Kind) -> Result<Quantity, Diagnostic> {
+    quantity::parse_as(&text.value, &text.place, kind)
+        .or_else(|found| quantity::parse(&text.value, &text.place).map_err(|_| found))
 }
 
 /// Reads a quantity of a basis value that stands for another one in a condition or a figure; reports another dimension.
@@ -248,7 +234,7 @@ pub(super) fn same_kind(
     wanted: &Quantity,
     diagnostics: &mut Diagnostics,
 ) -> Option<Quantity> {
-    let quantity = diagnostics.keep(quantity::parse(&text.value, &text.place))?;
+    let quantity = diagnostics.keep(quantity_as(text, wanted.kind))?;
     if quantity.kind != wanted.kind {
         diagnostics.push(
             Diagnostic::error(&text.place, format!("`{}` is no value of `{name}`", text.value))

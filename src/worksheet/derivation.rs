@@ -4,7 +4,6 @@ use std::collections::BTreeMap;
 use std::ops::Range;
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
-use crate::formula::Expr;
 use crate::source::Place;
 
 use super::fence::RawBlock;
@@ -134,10 +133,10 @@ pub(super) fn check_order(
     let mut defined: BTreeMap<&str, (usize, &Place)> = BTreeMap::new();
     let mut uses: Vec<Vec<(&str, &Place)>> = Vec::new();
     for (index, line) in lines.iter().enumerate() {
-        let mut names = Vec::new();
+        let names;
         match &line.what {
             DerivationKind::Define { name, formula } => {
-                collect(&formula.expr, &mut names);
+                names = formula.names();
                 let first = elsewhere.get(name.value.as_str()).copied();
                 let first = first.or(defined.get(name.value.as_str()).map(|(_, place)| *place));
                 match first {
@@ -154,8 +153,7 @@ pub(super) fn check_order(
                 }
             }
             DerivationKind::Assert { relation, .. } => {
-                collect(&relation.left, &mut names);
-                collect(&relation.right, &mut names);
+                names = relation.names();
             }
         }
         uses.push(names);
@@ -206,23 +204,4 @@ fn leans(
         }
     }
     false
-}
-
-fn collect<'e>(expr: &'e Expr, names: &mut Vec<(&'e str, &'e Place)>) {
-    match expr {
-        Expr::Literal { .. } => {}
-        Expr::Name { name, place } => names.push((name, place)),
-        Expr::Negate(inner) => collect(inner, names),
-        Expr::Binary { left, right, .. } => {
-            collect(left, names);
-            collect(right, names);
-        }
-        Expr::Call { arguments, .. } => arguments.iter().for_each(|argument| collect(argument, names)),
-        Expr::Choice { condition, then, otherwise, .. } => {
-            collect(&condition.left, names);
-            collect(&condition.right, names);
-            collect(then, names);
-            collect(otherwise, names);
-        }
-    }
 }

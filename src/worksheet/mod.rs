@@ -6,6 +6,7 @@ mod conditions;
 mod derivation;
 mod fence;
 mod figure;
+mod flow;
 mod head;
 mod lines;
 mod math;
@@ -15,8 +16,9 @@ mod read;
 pub mod recall;
 mod records;
 
-pub use basis::origin;
+pub use basis::{basis_text, quantity_as, source_of};
 pub use fence::WORDS;
+pub use flow::flow;
 pub use read::read;
 
 use crate::diagnostic::Diagnostics;

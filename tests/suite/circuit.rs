@@ -108,6 +108,21 @@ fn values_come_from_formulas_parts_and_the_basis_under_the_same_name() {
     assert_eq!(symbols, ["K1"]);
 }
 
+#[test]
+fn codes_of_iec_60062_are_read_by_where_they_stand() {
+    let built = built(
+        "BT1: {supply: V_bat, plus: a}\nR1: {resistor: 4k7 ± 1 %, from: a, to: b}\n\
+         C1: {capacitor: 4n7, from: b, to: ground}\nR2: {resistor: 2R2, from: b, to: ground}\n",
+    );
+    let values: Vec<f64> = built.inputs.iter().map(|input| input.sourced.quantity.spread.nominal).collect();
+    for (value, wanted) in values.iter().zip([4.7e3, 4.7e-9, 2.2]) {
+        assert!((value / wanted - 1.0).abs() < 1e-12, "{values:?}");
+    }
+    assert!((built.inputs[0].sourced.quantity.spread.high - 4747.0).abs() < 1e-9);
+    assert_eq!(built.inputs[0].sourced.quantity.kind, Kind::of(Dimension::OHM));
+    assert_eq!(built.inputs[1].sourced.quantity.kind, Kind::of(Dimension::FARAD));
+}
+
 /// A supply and a resistor that make the rest of a test's circuit whole; two lines.
 fn with_supply(elements: &str) -> String {
     format!("BT1: {{supply: V_bat, plus: a}}\nR1: {{resistor: 1 kΩ, from: a, to: ground}}\n{elements}")

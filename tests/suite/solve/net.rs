@@ -60,7 +60,7 @@ impl Net {
     }
 
     /// Currents into the terminals of an element, as the point states them.
-    pub fn into_terminals(&self, point: &OperatingPoint, element: usize) -> Vec<f64> {
+    pub fn terminal_currents(&self, point: &OperatingPoint, element: usize) -> Vec<f64> {
         let at = &point.elements[element];
         match self.elements[element].class {
             Class::Transistor => vec![at.i, at.i_b, -at.i - at.i_b],
@@ -75,7 +75,7 @@ impl Net {
         let highest = point.voltages.iter().fold(1.0_f64, |high, v| high.max(v.abs()));
         let mut worst = 0.0_f64;
         for (element, (topology, branch)) in self.elements.iter().zip(&self.branches).enumerate() {
-            for (&node, current) in topology.terminals.iter().zip(self.into_terminals(point, element)) {
+            for (&node, current) in topology.terminals.iter().zip(self.terminal_currents(point, element)) {
                 sums[node].0 += current;
                 sums[node].1 = sums[node].1.max(current.abs());
             }

@@ -2,7 +2,7 @@
 //! theorem; nothing is accepted that an independent check would refuse.
 
 use qsheaf::device::transistor::Transistor;
-use qsheaf::solve::{Branch, Failure, OperatingPoint, Thermal};
+use qsheaf::solve::{Attempt, Branch, Failure, OperatingPoint, Thermal};
 
 use super::net::{Net, full, ideal, plain_diode, zener};
 
@@ -23,7 +23,7 @@ impl Numbers {
     }
 
     fn decades(&mut self, low: f64, high: f64) -> f64 {
-        low * (high / low).powf(self.next())
+        low * libm::pow(high / low, self.next())
     }
 
     fn transistor(&mut self) -> Transistor {
@@ -100,7 +100,7 @@ fn check(net: &Net, point: &OperatingPoint, seed: u64) {
         let by_nodes: f64 = net.elements[element]
             .terminals
             .iter()
-            .zip(net.into_terminals(point, element))
+            .zip(net.terminal_currents(point, element))
             .map(|(&node, current)| point.voltages[node] * current)
             .sum();
         sum += by_nodes;
@@ -149,11 +149,28 @@ fn sensible_networks_are_solved() {
     assert_eq!(differ, 0);
 }
 
-/// With junctions anywhere, some networks put junctions straight across a supply: these fail, and no others.
+/// With junctions anywhere, some networks put junctions straight across a supply; what is
+/// accepted is right all the same.
 #[test]
 fn any_network_is_right_or_fails() {
     let (failed, differ) = survey(false);
     let beyond = failed.iter().filter(|(_, failure)| matches!(failure, Failure::BeyondModel { .. })).count();
-    assert!(failed.len() < 200 && failed.len() - beyond < 30, "{beyond} of {}", failed.len());
+    assert!(failed.len() < 120 && beyond >= 20, "{beyond} of {}", failed.len());
     assert!(differ < 5, "{differ}");
+}
+
+/// Networks that plain Newton's method does not solve: source stepping and conductance stepping do.
+#[test]
+fn stepping_takes_over() {
+    let mut ways = std::collections::BTreeSet::new();
+    for seed in [1634, 2451, 2456, 2474, 4165, 4208, 12898, 12943] {
+        let (net, ambient) = network(seed, true);
+        let point = net.solve(ambient).unwrap_or_else(|failure| panic!("network {seed}: {failure:?}"));
+        check(&net, &point, seed);
+        ways.extend(point.attempts.last().copied());
+    }
+    assert!(
+        ways.contains(&Attempt::SourceStepping) && ways.contains(&Attempt::ConductanceStepping),
+        "{ways:?}"
+    );
 }

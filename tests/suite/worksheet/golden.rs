@@ -1,9 +1,10 @@
 //! One whole worksheet, as an author would write it.
 
 use qsheaf::diagnostic::Severity;
+use qsheaf::markup::{Flow, Inline};
 use qsheaf::quantity::{Kind, Origin};
 use qsheaf::worksheet::{
-    CriterionKind, DerivationKind, ElementState, FigureKind, Over, Piece, Region, Span, Worksheet,
+    self, CriterionKind, DerivationKind, ElementState, FigureKind, Over, Piece, Region, Span, Worksheet,
 };
 
 use super::whole;
@@ -211,6 +212,27 @@ fn a_footnote_stands_where_it_is_referred_to() {
                 if matches!(content.as_slice(), [Span::Text(_), Span::Recall(0), Span::Text(_)])))
     });
     assert!(found, "{content:#?}");
+}
+
+#[test]
+fn the_flow_has_recalls_filled_in() {
+    let worksheet = lamp();
+    let flow = worksheet::flow(&worksheet.body, &|index| vec![Inline::Text { text: format!("#{index}") }]);
+    assert_eq!(flow.len(), worksheet.body.len());
+    let texts: Vec<String> = flow
+        .iter()
+        .filter_map(|flow| match flow {
+            Flow::Paragraph { content } => Some(content),
+            _ => None,
+        })
+        .flatten()
+        .filter_map(|inline| match inline {
+            Inline::Text { text } => Some(text.clone()),
+            _ => None,
+        })
+        .collect();
+    let all = texts.concat();
+    assert!(all.contains("The base gets #1; Q1 is #2."), "{all}");
 }
 
 #[test]

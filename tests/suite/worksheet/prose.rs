@@ -118,21 +118,23 @@ fn formula(written: &str) -> (Math, String) {
 #[test]
 fn formulas_read_plain_and_with_commands() {
     for (written, spoken) in [
-        ("V_CE(sat) <= 0.3 V", "V CE(sat) is at most 0.3 V"),
-        ("\\frac{V_{CC} - V_{BE}}{R_B}", "V CC minus V BE over R B"),
+        ("V_CE(sat) <= 0.3 V", "V sub CE(sat) is at most 0.3 V"),
+        ("\\frac{V_{CC} - V_{BE}}{R_B}", "V sub CC minus V sub BE over R sub B"),
         ("a/b", "a over b"),
         ("(a + b)/c", "a plus b over c"),
         ("x^2 + y^{-1}", "x to the power 2 plus y to the power minus 1"),
         ("\\sqrt{x}", "the square root of x"),
         ("sqrt(x)", "the square root of x"),
-        ("|A_v|", "the magnitude of A v"),
-        ("R_1 || R_2", "R 1 in parallel with R 2"),
-        ("I_C \\approx \\beta I_B", "I C is about β I B"),
-        ("Q1.V_BE", "V BE of Q1"),
+        ("|A_v|", "the magnitude of A sub v"),
+        ("R_1 || R_2", "R sub 1 in parallel with R sub 2"),
+        ("I_C \\approx \\beta I_B", "I sub C is about β I sub B"),
+        ("Q1.V_BE", "V sub BE of Q1"),
         ("\\ln(a)", "ln of a"),
         ("25 °C", "25 °C"),
         ("10 %", "10 %"),
-        ("2 R_L", "2 R L"),
+        ("200 K/W", "200 K/W"),
+        ("Q1.forced_gain", "I_C/I_B of Q1"),
+        ("2 R_L", "2 R sub L"),
         ("\\left( a \\right)", "open bracket a close bracket"),
     ] {
         assert_eq!(formula(written).1, spoken, "{written}");

@@ -1,5 +1,8 @@
 //! Markdown -> pieces of the body: prose with its recalls, images and listings, and where our own blocks stand.
 
+mod frames;
+mod targets;
+
 use std::collections::{BTreeMap, BTreeSet};
 use std::ops::Range;
 
@@ -9,6 +12,7 @@ use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::markup::Align;
 use crate::source::Place;
 
+use self::frames::{Bit, Frame, Inner, flush, push_bit, push_piece};
 use super::fence::{self, RawBlock};
 use super::page::{MARK, Page};
 use super::{Piece, Recall, Span, Spot, enough, math, recall};
@@ -84,31 +88,6 @@ fn definitions(events: &Events) -> BTreeMap<String, Range<usize>> {
         }
     }
     found
-}
-
-/// Text of a line as it is collected: spans, and images that will stand on their own.
-enum Bit {
-    Span(Span),
-    Image(Piece),
-}
-
-enum Frame {
-    Blocks { quote: bool, pieces: Vec<Piece>, loose: Vec<Bit> },
-    List { ordered: Option<u64>, items: Vec<Vec<Piece>> },
-    Table { align: Vec<Align>, head: Vec<Vec<Span>>, rows: Vec<Vec<Vec<Span>>>, row: Vec<Vec<Span>> },
-    Bits { what: Inner, bits: Vec<Bit> },
-    Image { path: Option<String>, caption: String, alt: String, range: Range<usize> },
-}
-
-enum Inner {
-    Paragraph,
-    Heading(u8),
-    Cell,
-    Emphasis,
-    Strong,
-    Struck,
-    /// A link, or only its words where its target was refused.
-    Link(Option<String>),
 }
 
 struct Walk<'p, 'd> {
@@ -515,88 +494,6 @@ impl Walk<'_, '_> {
         Some(Span::Footnote(self.pieces(all.get(definition)?, all, true)))
     }
 
-    fn target(&mut self, target: &str, title: &str, range: Range<usize>) -> Option<String> {
-        if target.contains(MARK) || title.contains(MARK) {
-            let marked = self.after_words(&range);
-            self.misplaced(marked, "the address of a link");
-            return None;
-        }
-        let scheme = target.split_once(':').map(|(scheme, _)| scheme.to_ascii_lowercase());
-        if matches!(scheme.as_deref(), Some("http" | "https" | "mailto")) {
-            return Some(target.to_owned());
-        }
-        // An address of mail that stands in angle brackets has no scheme.
-        if target.contains('@') && !target.contains([':', '/']) {
-            return Some(format!("mailto:{target}"));
-        }
-        self.error(range, &format!("a report cannot lead to `{target}`"))
-            .expected("an address that begins with https:, http: or mailto:")
-            .push(self.diagnostics);
-        None
-    }
-
-    fn image_path(&mut self, target: &str, title: &str, range: Range<usize>) -> Option<String> {
-        if target.contains(MARK) || title.contains(MARK) {
-            let marked = self.after_words(&range);
-            self.misplaced(marked, "the path or the caption of an image");
-            return None;
-        }
-        match inside_notebook(self.page.file, target) {
-            Some(path) => Some(path),
-            None => {
-                self.error(range, &format!("the image `{target}` does not lie inside the notebook"))
-                    .expected("a path relative to the worksheet, such as `images/board.png`")
-                    .push(self.diagnostics);
-                None
-            }
-        }
-    }
-
-    /// The part of a link or image after its words.
-    fn after_words(&self, range: &Range<usize>) -> Range<usize> {
-        let text = self.masked.get(range.clone()).unwrap_or("");
-        range.start + text.rfind("](").map_or(0, |at| at + 2)..range.end
-    }
-
-    fn image(
-        &mut self,
-        path: Option<String>,
-        caption: String,
-        alt: &str,
-        range: Range<usize>,
-    ) -> Option<Piece> {
-        let path = path?;
-        let place = self.page.place(range.clone());
-        if alt.trim().is_empty() {
-            self.error(range, "the image has no alternative text")
-                .expected("what the image shows, in words: `![the board seen from above](board.png)`")
-                .push(self.diagnostics);
-            return None;
-        }
-        self.body.images.push((path.clone(), place.clone()));
-        let caption = if caption.is_empty() { Vec::new() } else { vec![Span::Text(caption)] };
-        Some(Piece::Image { path, alt: alt.trim().to_owned(), caption, place })
-    }
-
-    fn place_image(&mut self, image: Piece, stack: &mut [Frame]) {
-        match stack.last() {
-            Some(Frame::Bits { what: Inner::Paragraph, .. } | Frame::Blocks { .. }) => {
-                push_bit(stack, Bit::Image(image))
-            }
-            _ => {
-                if let Piece::Image { place, .. } = image {
-                    self.diagnostics.push(
-                        Diagnostic::error(
-                            &place,
-                            "an image cannot stand in a heading, table, link or emphasis",
-                        )
-                        .expected("the image in a paragraph of its own"),
-                    );
-                }
-            }
-        }
-    }
-
     /// Reports recalls that stand where nothing is printed.
     fn finish(&mut self) {
         let lost: Vec<Range<usize>> = self
@@ -643,73 +540,4 @@ fn alignment(alignment: &Alignment) -> Align {
         Alignment::Right => Align::Right,
         Alignment::None | Alignment::Left => Align::Left,
     }
-}
-
-/// A path relative to the folder of `worksheet` as a path inside the notebook; `None` where it leads out of it.
-fn inside_notebook(worksheet: &str, target: &str) -> Option<String> {
-    if target.is_empty() || target.starts_with('/') || target.contains(['\\', ':', '\0']) {
-        return None;
-    }
-    let mut parts: Vec<&str> = worksheet.split('/').collect();
-    parts.pop();
-    for part in target.split('/') {
-        match part {
-            "" | "." => {}
-            ".." => {
-                parts.pop()?;
-            }
-            name => parts.push(name),
-        }
-    }
-    (!parts.is_empty()).then(|| parts.join("/"))
-}
-
-fn push_piece(stack: &mut [Frame], piece: Piece) {
-    for frame in stack.iter_mut().rev() {
-        if let Frame::Blocks { pieces, loose, .. } = frame {
-            flush(pieces, loose);
-            pieces.push(piece);
-            return;
-        }
-    }
-}
-
-fn push_bit(stack: &mut [Frame], bit: Bit) {
-    let bits = match stack.last_mut() {
-        Some(Frame::Bits { bits, .. }) => bits,
-        Some(Frame::Blocks { loose, .. }) => loose,
-        _ => return,
-    };
-    // Neighbouring texts become one.
-    match (bits.last_mut(), bit) {
-        (_, Bit::Span(Span::Text(new))) if new.is_empty() => {}
-        (Some(Bit::Span(Span::Text(text))), Bit::Span(Span::Text(new))) => text.push_str(&new),
-        (_, bit) => bits.push(bit),
-    }
-}
-
-/// Turns collected bits into a paragraph, with images between as pieces of their own.
-fn flush(pieces: &mut Vec<Piece>, bits: &mut Vec<Bit>) {
-    let mut content = Vec::new();
-    let close = |content: &mut Vec<Span>, pieces: &mut Vec<Piece>| {
-        let blank = content.iter().all(|span| match span {
-            Span::Text(text) => text.trim().is_empty(),
-            Span::Break => true,
-            _ => false,
-        });
-        let content = std::mem::take(content);
-        if !blank {
-            pieces.push(Piece::Paragraph { content });
-        }
-    };
-    for bit in bits.drain(..) {
-        match bit {
-            Bit::Span(span) => content.push(span),
-            Bit::Image(image) => {
-                close(&mut content, pieces);
-                pieces.push(image);
-            }
-        }
-    }
-    close(&mut content, pieces);
 }

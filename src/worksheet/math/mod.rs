@@ -1,10 +1,14 @@
 //! `$...$` in prose: mathematics as authors write it, either plainly (`V_CE(sat) <= 0.3 V`) or with the usual backslash
 //! commands (`\frac{V_{CC}}{R_C}`), read into the tree that the templates set, with a reading aloud.
 
+mod spoken;
+
 use std::ops::Range;
 
 use crate::diagnostic::nearest;
+use crate::formula;
 use crate::markup::Math;
+use crate::quantity;
 
 /// The deepest nesting of a formula, and its greatest length in bytes.
 const DEEPEST: usize = 24;
@@ -105,9 +109,6 @@ const PLAIN: [(char, &str); 14] = [
 const FUNCTIONS: [&str; 12] =
     ["ln", "log", "exp", "sin", "cos", "tan", "arctan", "min", "max", "log10", "atan", "lim"];
 const SPACES: [&str; 8] = ["\\left", "\\right", "\\quad", "\\,", "\\;", "\\:", "\\!", "\\ "];
-/// Units that are set upright after a number.
-const UNITS: [&str; 12] = ["V", "A", "Ω", "S", "W", "F", "H", "s", "Hz", "K", "J", "C"];
-
 /// Reads a formula.
 ///
 /// # Errors
@@ -128,9 +129,9 @@ pub(super) fn read(text: &str) -> Result<(Math, String), Box<Fault>> {
     if depth(&row) > DEEPEST {
         return Err(fault(0..text.len(), "the formula is nested too deep", "a simpler formula"));
     }
-    let mut spoken = String::new();
-    speak(&row, &mut spoken);
-    Ok((row, spoken.split_whitespace().collect::<Vec<_>>().join(" ")))
+    let mut words = String::new();
+    spoken::speak(&row, &mut words);
+    Ok((row, words.split_whitespace().collect::<Vec<_>>().join(" ")))
 }
 
 fn fault(range: Range<usize>, message: &str, expected: &str) -> Box<Fault> {
@@ -328,7 +329,10 @@ impl<'a> Reader<'a> {
         let word = spaced[..word_end].trim_end_matches('/');
         // A letter that goes on as `V_CC` or `V(t)` is a symbol, not a unit.
         let goes_on = spaced[word.len()..].starts_with(['_', '(', '{', '.', '^']);
-        let is_unit = word.split('/').all(is_unit) && !goes_on && (word == "%" || after.len() > spaced.len());
+        let is_unit = !word.is_empty()
+            && quantity::parse_unit(word).is_some()
+            && !goes_on
+            && (word == "%" || after.len() > spaced.len());
         if !is_unit {
             return Math::Number { digits, exponent: None, unit: String::new() };
         }
@@ -435,6 +439,11 @@ impl<'a> Reader<'a> {
                 self.at += word.len() + 2;
             }
         }
+        if !owner.is_empty() {
+            // Results of the circuit are set as everywhere else in the note.
+            let name = if subscript.is_empty() { base } else { format!("{base}_{subscript}") };
+            return Ok(formula::symbol(&format!("{owner}.{name}")));
+        }
         Ok(Math::Symbol { base, subscript, owner })
     }
 }
@@ -455,15 +464,6 @@ fn unknown_command(name: &str, whole: &str, start: usize) -> Box<Fault> {
     })
 }
 
-fn is_unit(word: &str) -> bool {
-    let prefixed = |unit: &str| {
-        word.strip_suffix(unit).is_some_and(|prefix| {
-            prefix.is_empty() || ["p", "n", "u", "µ", "μ", "m", "k", "M", "G"].contains(&prefix)
-        })
-    };
-    matches!(word, "%" | "°C" | "ppm" | "dB" | "rad" | "h" | "min") || UNITS.into_iter().any(prefixed)
-}
-
 fn ungrouped(math: Math) -> Math {
     match math {
         Math::Group { inner } => *inner,
@@ -481,68 +481,5 @@ fn depth(math: &Math) -> usize {
         }
         Math::Root { radicand: inner } | Math::Group { inner } | Math::Absolute { inner } => depth(inner),
         Math::Symbol { .. } | Math::Number { .. } | Math::Operator { .. } | Math::Cases { .. } => 0,
-    }
-}
-
-/// The formula read aloud. Depth is bounded by the reader.
-fn speak(math: &Math, out: &mut String) {
-    match math {
-        Math::Row { parts } => parts.iter().for_each(|part| speak(part, out)),
-        Math::Symbol { base, subscript, owner } => {
-            out.push_str(&format!(" {base} {subscript}"));
-            if !owner.is_empty() {
-                out.push_str(&format!(" of {owner}"));
-            }
-        }
-        Math::Number { digits, unit, .. } => out.push_str(&format!(" {digits} {unit}")),
-        Math::Operator { sign } => {
-            let named = SIGNS.iter().find(|(_, shown, _)| shown == sign).map(|(.., words)| *words);
-            let plain = || PLAIN.iter().find(|(c, _)| sign.starts_with(*c)).map(|(_, words)| *words);
-            out.push_str(&format!(" {} ", named.or_else(plain).unwrap_or(sign)));
-        }
-        Math::Fraction { above, below } => {
-            speak(above, out);
-            out.push_str(" over ");
-            speak(below, out);
-        }
-        Math::Power { base, exponent } => {
-            speak(base, out);
-            out.push_str(" to the power ");
-            speak(exponent, out);
-        }
-        Math::Root { radicand } => {
-            out.push_str(" the square root of ");
-            speak(radicand, out);
-        }
-        Math::Group { inner } => {
-            out.push_str(" open bracket ");
-            speak(inner, out);
-            out.push_str(" close bracket ");
-        }
-        Math::Absolute { inner } => {
-            out.push_str(" the magnitude of ");
-            speak(inner, out);
-        }
-        Math::Call { name, arguments } => {
-            out.push_str(&format!(" {name} of "));
-            for (index, argument) in arguments.iter().enumerate() {
-                if index > 0 {
-                    out.push_str(" and ");
-                }
-                speak(argument, out);
-            }
-        }
-        Math::Cases { branches } => {
-            for (value, condition) in branches {
-                speak(value, out);
-                match condition {
-                    Some(condition) => {
-                        out.push_str(" if ");
-                        speak(condition, out);
-                    }
-                    None => out.push_str(" otherwise "),
-                }
-            }
-        }
     }
 }
