@@ -67,7 +67,7 @@ pub fn source(
     let drawings: Vec<_> = findings.figures.iter().map(figure::draw).collect();
     let page = page::page(findings, issue, moves, &images, &drawings);
     let (texts, foreign) = templates::gather(files)?;
-    let mut out = templates::render(&texts, &context(findings, issue, &page))?;
+    let mut out = templates::render(&texts, &safe::json_bytes(&context(findings, issue, &page)))?;
     let data = safe::json_bytes(&page);
     for (index, drawing) in drawings.into_iter().enumerate() {
         out.insert(format!("figure/{index}.svg"), drawing.svg.into_bytes().into());
