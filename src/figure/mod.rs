@@ -185,7 +185,7 @@ fn spread_names(names: &mut [(f64, &Curve)]) {
     names.sort_by(|a, b| a.0.total_cmp(&b.0));
     // Half of the height that a name takes, on either side of its middle.
     let half = |curve: &Curve| {
-        let lines = curve.name.chars().count().div_ceil(NAME_LETTERS).clamp(1, 4);
+        let lines = curve.name.chars().count().div_ceil(NAME_LETTERS).clamp(1, 3);
         (lines as f64 * NAME_LINE + 1.0) / 2.0
     };
     let mut least = f64::NEG_INFINITY;

@@ -19,6 +19,7 @@ use serde::{Deserialize, Serialize};
 use serde_json::{Value, json};
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
+use crate::figure;
 use crate::redline::Moves;
 use crate::source::Bundle;
 use crate::study::Findings;
@@ -63,12 +64,13 @@ pub fn source(
     files: &Bundle,
 ) -> Result<Sources, Diagnostics> {
     let images = page::images(findings, files);
-    let page = page::page(findings, issue, moves, &images);
+    let drawings: Vec<_> = findings.figures.iter().map(figure::draw).collect();
+    let page = page::page(findings, issue, moves, &images, &drawings);
     let (texts, foreign) = templates::gather(files)?;
-    let mut out = templates::render(&texts, &context(findings, issue, &page))?;
+    let mut out = templates::render(&texts, &safe::json_bytes(&context(findings, issue, &page)))?;
     let data = safe::json_bytes(&page);
-    for (index, svg) in page::drawings(findings).into_iter().enumerate() {
-        out.insert(format!("figure/{index}.svg"), svg.into_bytes().into());
+    for (index, drawing) in drawings.into_iter().enumerate() {
+        out.insert(format!("figure/{index}.svg"), drawing.svg.into_bytes().into());
     }
     for path in &images {
         if let (Some(name), Some(file)) = (page::image_path(&images, path), files.get(path)) {
@@ -106,6 +108,7 @@ fn context(findings: &Findings, issue: &Issue, page: &Value) -> Value {
             "trace": !findings.trace.is_empty(),
             "validity": !findings.validity.is_empty(),
             "warnings": !findings.warnings.0.is_empty(),
+            "earlier": page["note"]["earlier"].as_array().is_some_and(|rows| !rows.is_empty()),
             "logo": !page["note"]["logo"].is_null(),
         },
     })

@@ -112,8 +112,12 @@ struct Desk<'a> {
 }
 
 impl Desk<'_> {
+    /// The virtual path of a file; packages have none here.
     fn path(id: FileId) -> String {
-        id.vpath().get_without_slash().to_owned()
+        match id.root() {
+            VirtualRoot::Project => id.vpath().get_without_slash().to_owned(),
+            VirtualRoot::Package(_) => String::new(),
+        }
     }
 }
 
@@ -194,7 +198,9 @@ pub fn press(sources: &Sources) -> (Result<Vec<u8>, Diagnostics>, Diagnostics) {
         let mut out = Diagnostics::default();
         for error in &errors {
             let mut found = translate(&desk, error);
-            if error.message.contains("image") && !sources.images.is_empty() {
+            if (error.message.contains("image") || error.message.contains("SVG"))
+                && !sources.images.is_empty()
+            {
                 found.expected =
                     Some(format!("images that can be decoded; the note shows {}", sources.images.join(", ")));
             }

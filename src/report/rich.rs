@@ -3,40 +3,15 @@
 
 use serde_json::{Value, json};
 
+use crate::formula;
+use crate::markup::Math;
+
 /// A symbol as owner, base and subscript: `Q1.V_CE(sat)` is `["Q1", "V", "CE(sat)"]`.
 pub fn symbol(name: &str) -> Value {
-    let (owner, rest) = match name.rsplit_once('.') {
-        Some((owner, rest)) if !owner.is_empty() && !rest.is_empty() => (owner, rest),
-        _ => ("", name),
-    };
-    let (base, subscript) = match rest.split_once('_') {
-        Some((base, subscript)) if !base.is_empty() && !subscript.is_empty() => (base, subscript),
-        _ => (rest, ""),
-    };
-    json!([owner, greek(base), greek(subscript)])
-}
-
-/// The Greek letter that a name spells, or the name.
-fn greek(name: &str) -> &str {
-    const LETTERS: [(&str, &str); 16] = [
-        ("alpha", "α"),
-        ("beta", "β"),
-        ("gamma", "γ"),
-        ("delta", "δ"),
-        ("Delta", "Δ"),
-        ("eta", "η"),
-        ("theta", "θ"),
-        ("lambda", "λ"),
-        ("mu", "µ"),
-        ("rho", "ρ"),
-        ("sigma", "σ"),
-        ("tau", "τ"),
-        ("phi", "φ"),
-        ("psi", "ψ"),
-        ("omega", "ω"),
-        ("Omega", "Ω"),
-    ];
-    LETTERS.iter().find(|(word, _)| *word == name).map_or(name, |(_, letter)| letter)
+    match formula::symbol(name) {
+        Math::Symbol { owner, base, subscript } => json!([owner, base, subscript]),
+        _ => json!(["", name, ""]),
+    }
 }
 
 /// Text with the symbols in it picked out.
@@ -104,7 +79,8 @@ fn word(text: &str) -> usize {
 fn is_symbol(token: &str) -> bool {
     let (owner, rest) = token.rsplit_once('.').unwrap_or(("", token));
     let Some((base, subscript)) = rest.split_once('_') else { return false };
-    let short = base.chars().count() <= 2 || greek(base) != base;
+    let greek = matches!(formula::symbol(base), Math::Symbol { base: letter, .. } if letter != base);
+    let short = base.chars().count() <= 2 || greek;
     let brackets = subscript.matches('(').count() == subscript.matches(')').count();
     !base.is_empty()
         && short

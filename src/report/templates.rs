@@ -8,7 +8,6 @@ use std::sync::Arc;
 
 use minijinja::value::Value as Word;
 use minijinja::{AutoEscape, Environment, ErrorKind, UndefinedBehavior};
-use serde_json::Value;
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::source::{Bundle, Place};
@@ -54,13 +53,13 @@ pub(super) fn gather(files: &Bundle) -> Result<(BTreeMap<String, String>, Vec<St
     if errors.has_errors() { Err(errors) } else { Ok((out, foreign)) }
 }
 
-/// Renders every template with `context`.
+/// Renders every template with `context`, a JSON object that has passed the gate for printable text.
 pub(super) fn render(
     templates: &BTreeMap<String, String>,
-    context: &Value,
+    context: &[u8],
 ) -> Result<BTreeMap<String, Arc<[u8]>>, Diagnostics> {
     let environment = environment();
-    let context: Word = serde_json::from_value(context.clone()).map_err(|error| {
+    let context: Word = serde_json::from_slice(context).map_err(|error| {
         Diagnostic::bare(format!("the note's head cannot be given to templates: {error}"))
     })?;
     let mut out = BTreeMap::new();

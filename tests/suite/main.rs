@@ -1,6 +1,7 @@
 //! Every test of the project, in one binary.
 
 mod circuit;
+mod figure;
 mod formula;
 mod quantity;
 mod report;

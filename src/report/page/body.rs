@@ -42,11 +42,23 @@ fn visit(flows: &[Flow], seen: &mut impl FnMut(&Flow)) {
     }
 }
 
-/// Prose as a tree. Heading levels never skip one, whatever the worksheet did, for the sake of readers who navigate by
+/// Prose as a tree. A block that stands inside a list or a quotation is set behind it, where there is room for it. Heading
+/// levels never skip one, whatever the worksheet did, for the sake of readers who navigate by
 /// them.
 pub(super) fn flows(body: &[Flow], images: &[String]) -> Value {
     let mut level = 0;
-    Value::Array(body.iter().map(|piece| flow(piece, images, &mut level)).collect())
+    let mut out = Vec::new();
+    for piece in body {
+        out.push(flow(piece, images, &mut level));
+        if matches!(piece, Flow::List { .. } | Flow::Quote { .. }) {
+            visit(std::slice::from_ref(piece), &mut |inner| {
+                if let Flow::Placed { word, index } = inner {
+                    out.push(json!({"flow": "placed", "word": word, "index": index}));
+                }
+            });
+        }
+    }
+    Value::Array(out)
 }
 
 fn flow(piece: &Flow, images: &[String], level: &mut u8) -> Value {
@@ -68,6 +80,9 @@ fn flow(piece: &Flow, images: &[String], level: &mut u8) -> Value {
         Flow::Rule => json!({"flow": "rule"}),
         Flow::Table { align, head, rows } => {
             let columns = rows.iter().map(Vec::len).chain([head.len(), align.len()]).max().unwrap_or(0);
+            if columns == 0 {
+                return json!({"flow": "nothing"});
+            }
             let pad = |row: &[Vec<Inline>]| {
                 let cell = |i: usize| row.get(i).map_or(json!([]), |cell| inlines(cell));
                 (0..columns).map(cell).collect::<Vec<_>>()
@@ -175,7 +190,7 @@ pub(super) fn derivation(findings: &Findings) -> Value {
 fn step(number: usize, found: &Step) -> Value {
     let defined = found.symbol.as_ref().map_or(0.0, em);
     let wide = defined + em(&found.symbols).max(em(&found.numbers)) > 0.8 * WIDEST;
-    let result = found.result.value().map(|value| cell::number(value, &found.unit, DIGITS, false));
+    let result = found.result.value().map(|value| cell::number(value, &found.unit, DIGITS));
     let reason = match &found.result {
         crate::quantity::Shown::NotShown(reason) => Some(rich(reason)),
         crate::quantity::Shown::Value(_) => None,
@@ -188,7 +203,9 @@ fn step(number: usize, found: &Step) -> Value {
         "wide": wide,
         "symbols": broken(&found.symbols),
         "numbers": broken(&found.numbers),
-        "result": result.map(|n| json!({"digits": n.digits, "unit": n.unit})),
+        "result": result.map(|n| json!({
+            "math": "number", "digits": n.printed.digits, "exponent": n.printed.exponent, "unit": n.printed.unit,
+        })),
         "reason": reason,
         "holds": found.holds,
         "spoken": aloud(&found.spoken, &found.label),

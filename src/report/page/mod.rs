@@ -7,21 +7,33 @@ mod tables;
 
 use serde_json::{Value, json};
 
-use crate::figure;
+use crate::figure::Drawing;
 use crate::quantity::{Kind, Shown, Unit};
 use crate::redline::Moves;
 use crate::source::Bundle;
-use crate::study::Findings;
+use crate::study::{FigureFinding, Findings};
 
 use super::cell::{self, DIGITS, Number};
 use super::rich::{rich, symbol};
 use super::{Issue, Status};
+use crate::quantity::preferred_unit;
 
-/// The page data of one note. `images` are the paths of the notebook's images in the order of their virtual files.
-pub(crate) fn page(findings: &Findings, issue: &Issue, moves: Option<&Moves>, images: &[String]) -> Value {
+/// How many revisions the first page lists.
+const REVISIONS: usize = 5;
+
+/// The page data of one note. `images` are the paths of the notebook's images in the order of their virtual files,
+/// `drawings` the figures of the findings in order.
+pub(crate) fn page(
+    findings: &Findings,
+    issue: &Issue,
+    moves: Option<&Moves>,
+    images: &[String],
+    drawings: &[Drawing],
+) -> Value {
     let note = &findings.note;
     let placed = body::placed_words(&findings.body);
     let revisions: Vec<Value> = note.revisions.iter().map(|row| json!(row)).collect();
+    let earlier = revisions.len().saturating_sub(REVISIONS);
     json!({
         "note": {
             "organisation": note.organisation,
@@ -36,7 +48,9 @@ pub(crate) fn page(findings: &Findings, issue: &Issue, moves: Option<&Moves>, im
             "language": language(&note.language),
             "paper": if note.paper == "us-letter" { "us-letter" } else { "a4" },
             "logo": note.logo.as_ref().and_then(|logo| image_path(images, logo)),
-            "revisions": revisions,
+            // The first page has room for the latest; the rest go to the end of the note.
+            "revisions": revisions[earlier..],
+            "earlier": revisions[..earlier],
         },
         "issue": {
             "number": issue.number,
@@ -62,7 +76,7 @@ pub(crate) fn page(findings: &Findings, issue: &Issue, moves: Option<&Moves>, im
         "circuit": tables::circuit(findings),
         "derivation": body::derivation(findings),
         "acceptance": tables::acceptance(findings),
-        "figures": findings.figures.iter().enumerate().map(|(i, f)| drawing(i, f)).collect::<Vec<_>>(),
+        "figures": findings.figures.iter().zip(drawings).enumerate().map(drawing).collect::<Vec<_>>(),
         "points": tables::points(findings),
         "tolerance": tables::tolerance(findings),
         "stress": tables::stress(findings),
@@ -79,13 +93,7 @@ pub(crate) fn page(findings: &Findings, issue: &Issue, moves: Option<&Moves>, im
     })
 }
 
-/// The SVG files of the figures, in order.
-pub(crate) fn drawings(findings: &Findings) -> Vec<String> {
-    findings.figures.iter().map(|figure| figure::draw(figure).svg).collect()
-}
-
-fn drawing(index: usize, finding: &crate::study::FigureFinding) -> Value {
-    let drawn = figure::draw(finding);
+fn drawing((index, (finding, drawn)): (usize, (&FigureFinding, &Drawing))) -> Value {
     let axis = |axis: &crate::study::AxisFinding| json!({"title": axis.title, "symbol": axis.symbol, "unit": axis.unit.symbol});
     json!({
         "file": format!("figure/{index}.svg"),
@@ -95,8 +103,8 @@ fn drawing(index: usize, finding: &crate::study::FigureFinding) -> Value {
         "x": axis(&finding.x), "y": axis(&finding.y),
         "x_ticks": drawn.x_ticks, "y_ticks": drawn.y_ticks,
         "name": drawn.name,
-        "names": drawn.names.iter().map(|(at, name)| json!([at, rich(name)])).collect::<Vec<_>>(),
-        "marks": drawn.marks.iter().map(|(x, y, name)| json!([x, y, rich(name)])).collect::<Vec<_>>(),
+        "names": drawn.names.iter().map(|(at, name)| json!([at, rich(&short(name, 60))])).collect::<Vec<_>>(),
+        "marks": drawn.marks.iter().map(|(x, y, name)| json!([x, y, rich(&short(name, 60))])).collect::<Vec<_>>(),
     })
 }
 
@@ -182,5 +190,5 @@ fn shown(value: &Shown, unit: &Unit) -> Option<Number> {
 
 /// A value of a part record in the coherent unit with a fitting prefix.
 fn plain(value: f64, kind: Kind) -> Number {
-    cell::number(value, &cell::common_unit(kind, [value]), DIGITS, true)
+    cell::given(value, &preferred_unit(&[value], kind), DIGITS)
 }

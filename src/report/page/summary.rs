@@ -2,7 +2,7 @@
 
 use serde_json::{Value, json};
 
-use crate::quantity::Shown;
+use crate::quantity::digits_apart;
 use crate::study::{CriterionFinding, Established, Findings, Verdict};
 
 use super::super::cell::{self, DIGITS, Number};
@@ -147,8 +147,7 @@ pub(super) fn established(how: Established) -> &'static str {
 }
 
 fn limit(finding: &CriterionFinding) -> Option<Number> {
-    let value = finding.limit.value()?;
-    let mut number = cell::number(value, &finding.unit, 6, true);
+    let mut number = cell::given(finding.limit.value()?, &finding.unit, 6);
     if ["≤", "≥", "<", ">", "="].contains(&finding.relation.as_str()) {
         number.before = finding.relation.clone();
     }
@@ -158,32 +157,14 @@ fn limit(finding: &CriterionFinding) -> Option<Number> {
 /// The worst value with as many digits as it takes not to contradict the verdict.
 fn worst(finding: &CriterionFinding) -> Option<Number> {
     let value = finding.worst.value.value()?;
-    let Some(limit) = finding.limit.value() else {
-        return Some(cell::number(value, &finding.unit, DIGITS, false));
-    };
-    let order = |text: &Number, bound: &Number| parse(text).partial_cmp(&parse(bound));
-    let bound = cell::number(limit, &finding.unit, 15, true);
-    let digits = (DIGITS..=12)
-        .find(|digits| {
-            order(&cell::number(value, &finding.unit, *digits, false), &bound) == value.partial_cmp(&limit)
-        })
-        .unwrap_or(DIGITS);
-    Some(cell::number(value, &finding.unit, digits, false))
+    let digits =
+        finding.limit.value().map_or(DIGITS, |limit| digits_apart(value, limit, &finding.unit, DIGITS));
+    Some(cell::number(value, &finding.unit, digits))
 }
 
-fn parse(number: &Number) -> f64 {
-    number.digits.replace('−', "-").parse().unwrap_or(f64::NAN)
-}
-
+/// A margin is a difference: between temperatures it is in kelvin.
 fn margin(finding: &CriterionFinding) -> Option<Number> {
-    let Shown::Value(value) = finding.margin else { return None };
-    // A margin is a difference: between temperatures it is in kelvin.
-    let mut unit = finding.unit.clone();
-    unit.offset = 0.0;
-    if finding.kind.point {
-        unit.symbol = "K".to_owned();
-    }
-    Some(cell::number(value, &unit, 3, false))
+    Some(cell::number(finding.margin.value()?, &finding.unit.of_difference(), 3))
 }
 
 /// Stress lines for the first page: those that are not met or not shown.

@@ -6,7 +6,7 @@ use serde::Serialize;
 use serde_json::{Value, json};
 
 use crate::part::RowQuantity;
-use crate::quantity::{Dimension, Kind, Origin, Shown, Source, Unit};
+use crate::quantity::{self, Dimension, Kind, Origin, Shown, Source, Unit, digits_apart, preferred_unit};
 use crate::redline::{FileMove, Moves};
 use crate::stress::StressLine;
 use crate::study::{Findings, Input, OperatingFinding, ResultFinding, Verdict};
@@ -39,7 +39,7 @@ pub(super) fn basis(findings: &Findings) -> Value {
                         let exact = input.spread.is_exact();
                         let unit = &input.unit;
                         let nominal = pick(input) == input.spread.nominal;
-                        (!exact || nominal).then(|| cell::number(pick(input), unit, DIGITS, true))
+                        (!exact || nominal).then(|| cell::given(pick(input), unit, 6))
                     };
                     cell::column(inputs.iter().map(printed).collect())
                 };
@@ -147,7 +147,7 @@ pub(super) fn points(findings: &Findings) -> Value {
     let all: Vec<&OperatingFinding> = findings.points.iter().collect();
     let devices = || all.iter().flat_map(|point| &point.transistors);
     let elements = || all.iter().flat_map(|point| &point.elements);
-    let unit = |dimension, values: Vec<f64>| cell::common_unit(Kind::of(dimension), values);
+    let unit = |dimension, values: Vec<f64>| preferred_unit(&values, Kind::of(dimension));
     let units = PointUnits {
         node: unit(Dimension::VOLT, all.iter().flat_map(|p| p.nodes.iter().map(|n| n.1)).collect()),
         v_be: unit(Dimension::VOLT, devices().map(|t| t.v_be).collect()),
@@ -181,8 +181,7 @@ fn point(point: &OperatingFinding, units: &PointUnits) -> Value {
     let of = |unit: &Unit, pick: fn(&crate::study::TransistorPoint) -> Option<f64>| {
         cell::column(devices.iter().map(|t| pick(t).map(|value| fixed(value, unit))).collect())
     };
-    let ratio = Unit { symbol: String::new(), kind: Kind::NONE, factor: 1.0, offset: 0.0 };
-    let celsius = cell::common_unit(Kind::TEMPERATURE, []);
+    let (ratio, celsius) = (Unit::none(), Unit::celsius());
     let columns = [
         of(&units.v_be, |t| Some(t.v_be)),
         of(&units.v_ce, |t| Some(t.v_ce)),
@@ -222,8 +221,7 @@ fn point(point: &OperatingFinding, units: &PointUnits) -> Value {
 /// A value of an operating point: four digits, two where it is far below the unit of its column.
 fn fixed(value: f64, unit: &Unit) -> Number {
     let value = if value.abs() < 1e-18 { 0.0 } else { value };
-    let small = ((value - unit.offset) / unit.factor).abs() < 1e-3;
-    cell::number(value, unit, if small { 2 } else { DIGITS }, false)
+    cell::number(value, unit, if unit.from_si(value).abs() < 1e-3 { 2 } else { DIGITS })
 }
 
 pub(super) fn tolerance(findings: &Findings) -> Value {
@@ -266,7 +264,7 @@ fn reason(value: &Shown) -> Value {
 
 /// Worst value, rating and limit of stress lines, as columns.
 pub(super) fn stress_lines(lines: &[&StressLine]) -> Vec<[Value; 3]> {
-    let given = |value: Option<f64>, unit: &Unit| value.map(|value| cell::number(value, unit, DIGITS, true));
+    let given = |value: Option<f64>, unit: &Unit| value.map(|value| cell::given(value, unit, DIGITS));
     let worst = cell::column(lines.iter().map(|line| shown(&line.worst, &line.unit)).collect());
     let rating = cell::column(lines.iter().map(|line| given(line.rating, &line.unit)).collect());
     let limit = cell::column(lines.iter().map(|line| given(line.limit, &line.unit)).collect());
@@ -395,26 +393,21 @@ pub(super) fn trace(findings: &Findings) -> Value {
 /// What moved since the last issue, as words.
 pub(super) fn moves(moves: &Moves) -> Value {
     let old_new = |old: &Option<Shown>, new: &Option<Shown>, unit: &Unit| {
-        let words = |value: &Option<Shown>| match value {
+        // Enough digits that a change can be seen.
+        let digits = match (old, new) {
+            (Some(Shown::Value(a)), Some(Shown::Value(b))) => digits_apart(*a, *b, unit, DIGITS),
+            _ => DIGITS,
+        };
+        [old, new].map(|value| match value {
             None => "–".to_owned(),
             Some(Shown::NotShown(_)) => "NOT SHOWN".to_owned(),
-            Some(Shown::Value(value)) => cell::number(*value, unit, DIGITS, false).text(),
-        };
-        // Enough digits that a change can be seen.
-        match (old, new) {
-            (Some(Shown::Value(a)), Some(Shown::Value(b))) if a != b => (DIGITS..=12)
-                .map(|digits| [*a, *b].map(|value| cell::number(value, unit, digits, false).text()))
-                .find(|[a, b]| a != b)
-                .unwrap_or_else(|| [words(old), words(new)]),
-            _ => [words(old), words(new)],
-        }
+            Some(Shown::Value(value)) => quantity::text(*value, unit, digits),
+        })
     };
     let judged = |state: &Option<(Verdict, Shown)>, unit: &Unit| {
         state.as_ref().map(|(found, margin)| {
             let (_, key, words) = verdict(found);
-            let mut unit = unit.clone();
-            unit.offset = 0.0;
-            let margin = margin.value().map(|margin| cell::number(margin, &unit, 3, false).text());
+            let margin = margin.value().map(|margin| quantity::text(margin, unit, 3));
             json!({"key": key, "verdict": words, "margin": margin})
         })
     };
@@ -437,7 +430,7 @@ pub(super) fn moves(moves: &Moves) -> Value {
             })
         }).collect::<Vec<_>>(),
         "verdicts": moves.verdicts.iter().map(|moved| {
-            let unit = margin_unit(&moved.unit, moved.kind);
+            let unit = moved.unit.of_difference();
             json!({
                 "label": rich(&moved.label), "flipped": moved.flipped(),
                 "old": judged(&moved.old, &unit), "new": judged(&moved.new, &unit),
@@ -445,10 +438,4 @@ pub(super) fn moves(moves: &Moves) -> Value {
         }).collect::<Vec<_>>(),
         "wording": moves.wording,
     })
-}
-
-/// A margin between temperatures is in kelvin.
-fn margin_unit(unit: &Unit, kind: Kind) -> Unit {
-    let symbol = if kind.point { "K".to_owned() } else { unit.symbol.clone() };
-    Unit { symbol, offset: 0.0, ..unit.clone() }
 }

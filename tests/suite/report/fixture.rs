@@ -628,7 +628,7 @@ fn results() -> Vec<ResultFinding> {
     let names = [
         ("I_B", "mA", 8.19),
         ("I_C", "mA", 104.0),
-        ("k", "", 12.7),
+        ("Q1.forced_gain", "", 12.7),
         ("Q1.V_CE", "V", 0.1231),
         ("Q1.V_BE", "V", 0.7512),
         ("Q1.T_j", "°C", 29.9),

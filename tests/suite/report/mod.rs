@@ -119,8 +119,8 @@ fn what_a_reviewer_looks_for_is_printed() {
     let all = pdf.all_text();
     for words in [
         "What moved since issue 2",
-        "0.33120001",
-        "0.33120002",
+        "0.331 200 01",
+        "0.331 200 02",
         "Hot surface",
         "температура корпуса буя",
         "напряжение на лампе",
@@ -330,14 +330,14 @@ fn a_notebook_brings_its_own_template_and_logo() {
     bundle.insert(File::new("templates/summary.typ", template.as_bytes().to_vec()));
     let mut own = findings();
     own.note.logo = Some("house/logo.svg".into());
-    own.note.organisation = "Lights #1 \"Harbour\" \\ Co".into();
+    own.note.organisation = "Lights #1 \"Harbour\" \\ Co 漢".into();
     let made = sources(&own, &bundle);
     assert_eq!(made.foreign, ["templates/summary.typ"]);
     let bytes = compile(&made).expect("typeset");
     let pdf = Pdf::read(&bytes);
     let first = pdf.text(1);
     assert!(first.contains("House order of Lights #1 \"Harbour\" \\ Co"), "{first}");
-    assert!(first.contains("Not for release."));
+    assert!(first.replace(' ', "").contains("Co⟨U+6F22⟩Notforrelease."), "{first}");
     assert!(pdf.alternatives().iter().any(|alt| alt.starts_with("Logo of Lights")));
     assert!(made.foreign.len() == 1 && sources(&findings(), &files()).foreign.is_empty());
 }
@@ -399,4 +399,41 @@ fn an_image_that_cannot_be_decoded_is_named() {
     let errors = typeset(&findings(), &issue(), None, &bundle).expect_err("an error");
     let expected = errors.0[0].expected.clone().unwrap_or_default();
     assert!(expected.contains("lantern/bench.svg"), "{errors:#?}");
+}
+
+#[test]
+fn many_revisions_leave_the_summary_on_the_first_page() {
+    let mut old = findings();
+    old.note.revisions =
+        (0..40).map(|i| [format!("R{i}"), "2026-01-01".into(), format!("change number {i}")]).collect();
+    let bytes = note(&old, &files());
+    let pdf = Pdf::read(&bytes);
+    let first = pdf.text(1);
+    assert!(first.contains("change number 39") && !first.contains("change number 34"), "{first}");
+    assert!(first.contains("inrush"));
+    assert!((0..40).all(|i| pdf.all_text().contains(&format!("change number {i}"))));
+}
+
+#[test]
+fn a_block_inside_a_list_is_set_once_behind_it() {
+    let mut nested = findings();
+    nested.body = vec![
+        Flow::List {
+            ordered: None,
+            items: vec![vec![Flow::Placed { word: "figure".into(), index: 2 }], vec![]],
+        },
+        Flow::Table { align: vec![], head: vec![], rows: vec![] },
+        Flow::Placed { word: "unheard of".into(), index: 7 },
+        Flow::Image { path: "not/in/the/notebook.png".into(), alt: String::new(), caption: vec![] },
+    ];
+    let bytes = note(&nested, &files());
+    let all = Pdf::read(&bytes).all_text();
+    assert_eq!(all.matches("Gain of Q1 over collector current").count(), 1);
+    assert!(all.contains("notebook.png is missing"));
+    // What the prose does not place is printed all the same.
+    for words in
+        ["Values of the design basis", "Transfer curve of the switch", "base current", "collector lamp"]
+    {
+        assert!(all.contains(words), "{words}");
+    }
 }
