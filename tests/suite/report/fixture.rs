@@ -1045,6 +1045,7 @@ pub fn moves() -> Moves {
             },
         ],
         wording: true,
+        incomparable: None,
     }
 }
 
