@@ -1,6 +1,7 @@
 //! Every test of the project, in one binary.
 
 mod circuit;
+mod demo;
 mod figure;
 mod fit;
 mod formula;
