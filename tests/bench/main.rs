@@ -147,17 +147,21 @@ fn note(work: &Path) -> bool {
     }
     let (whole, alone) = (median(whole), median(alone));
     let ratio = whole.as_secs_f64() / alone.as_secs_f64();
-    println!("note: issue {whole:.1?}, typesetting alone {alone:.1?}: ratio {ratio:.2} (at most 1.3: {})", verdict(ratio <= 1.3));
+    println!(
+        "note: issue {whole:.1?}, typesetting alone {alone:.1?}: ratio {ratio:.2} (at most 1.3: {})",
+        verdict(ratio <= 1.3)
+    );
     ratio <= 1.3
 }
 
 /// A notebook of 200 worksheets: the five of the demonstration, renumbered.
 fn many(notebook: &Path) {
     base(notebook);
-    let sheets: Vec<String> = ["lamp-switch", "telemetry-switch", "daylight-sensor", "horn-relay", "microphone-stage"]
-        .iter()
-        .map(|name| std::fs::read_to_string(demo().join(format!("{name}.md"))).unwrap())
-        .collect();
+    let sheets: Vec<String> =
+        ["lamp-switch", "telemetry-switch", "daylight-sensor", "horn-relay", "microphone-stage"]
+            .iter()
+            .map(|name| std::fs::read_to_string(demo().join(format!("{name}.md"))).unwrap())
+            .collect();
     for i in 0..NOTES {
         let text = &sheets[i % sheets.len()];
         let number = text.lines().find_map(|line| line.strip_prefix("note: ")).unwrap();
@@ -239,7 +243,10 @@ fn unchanged(notebook: &Path, kept: &mut bool) -> Duration {
     assert_eq!(pdfs(notebook), before, "something was issued although nothing changed");
     let (run, hash) = (median(runs), median(hashes));
     let ratio = run.as_secs_f64() / hash.as_secs_f64();
-    println!("unchanged: issue {run:.1?}, reading and hashing {hash:.1?}: ratio {ratio:.2} (at most 5: {})", verdict(ratio <= 5.0));
+    println!(
+        "unchanged: issue {run:.1?}, reading and hashing {hash:.1?}: ratio {ratio:.2} (at most 5: {})",
+        verdict(ratio <= 5.0)
+    );
     *kept &= ratio <= 5.0;
     run
 }
@@ -256,7 +263,10 @@ fn affected(notebook: &Path, nothing: Duration, all: Duration, kept: &mut bool) 
         let bound = nothing + all.mul_f64(1.2 * k as f64 / NOTES as f64);
         let new = pdfs(notebook) - before;
         let right = new == k && time <= bound;
-        println!("affected: {k} of {NOTES}: {new} new PDFs in {time:.1?} (at most {bound:.1?}: {})", verdict(right));
+        println!(
+            "affected: {k} of {NOTES}: {new} new PDFs in {time:.1?} (at most {bound:.1?}: {})",
+            verdict(right)
+        );
         *kept &= right;
     }
 }
@@ -270,7 +280,8 @@ fn kills(notebook: &Path) -> bool {
     let small = notebook.with_file_name("kills");
     base(&small);
     for i in 0..10 {
-        std::fs::copy(notebook.join(format!("sheet-{i:03}.md")), small.join(format!("sheet-{i:03}.md"))).unwrap();
+        std::fs::copy(notebook.join(format!("sheet-{i:03}.md")), small.join(format!("sheet-{i:03}.md")))
+            .unwrap();
     }
     let whole = issue(&small, 2);
     let mut right = true;
@@ -314,7 +325,8 @@ fn sound(notebook: &Path) -> bool {
     let mut stated = Vec::new();
     collect(&register, &mut stated);
     for (name, digest) in stated {
-        right &= std::fs::read(issued.join(&name)).is_ok_and(|bytes| Digest::of(&bytes).to_string() == digest);
+        right &=
+            std::fs::read(issued.join(&name)).is_ok_and(|bytes| Digest::of(&bytes).to_string() == digest);
     }
     right
 }
