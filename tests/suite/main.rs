@@ -6,5 +6,6 @@ mod formula;
 mod quantity;
 mod report;
 mod solve;
+mod spread;
 mod worksheet;
 mod yaml;

@@ -1,0 +1,48 @@
+//! How many evaluations a search takes: each is an operating point in a study.
+
+use std::sync::atomic::{AtomicUsize, Ordering};
+
+use qsheaf::spread::{self, Miss, Options};
+
+use super::{Draw, Stage, axes};
+
+/// Evaluations for a response with 15 axes and 60 outputs: `curved` of them with a top inside, the others monotone.
+fn evaluations(curved: usize, both_ends: bool) -> usize {
+    let draw = Draw::new(7);
+    let weights: Vec<Vec<f64>> = (0..60)
+        .map(|_| (0..15).map(|_| if draw.next() < 0.4 { draw.between(-1., 1.) } else { 0. }).collect())
+        .collect();
+    let stage = Stage {
+        axes: axes(&[("x", -1., 0., 1.); 15]),
+        outputs: 60,
+        equations: |at: &[f64], outputs: &mut [Result<f64, Miss>]| {
+            for (index, output) in outputs.iter_mut().enumerate() {
+                let sum: f64 = at.iter().zip(&weights[index]).map(|(x, w)| x * w).sum();
+                let bent =
+                    if index < curved { -0.8 * (at[index % 15] - 0.2) * (at[index % 15] - 0.2) } else { 0. };
+                *output = Ok(libm::exp(0.3 * sum) + bent);
+            }
+            0
+        },
+        count: AtomicUsize::new(0),
+    };
+    let wanted = (0..60).map(|i| if both_ends { (true, true) } else { (i % 2 == 0, i % 2 == 1) }).collect();
+    let found = spread::extremes(&stage, &Options { wanted });
+    assert_eq!(found.len(), 60);
+    stage.count.load(Ordering::Relaxed)
+}
+
+#[test]
+fn a_note_of_15_axes_and_60_outputs_stays_in_budget() {
+    let (monotone, curved, both) = (evaluations(0, false), evaluations(12, false), evaluations(12, true));
+    println!("{monotone} {curved} {both}");
+    assert!(monotone < 6_000, "{monotone}");
+    assert!(curved < 8_000, "{curved}");
+    assert!(both < 16_000, "{both}");
+}
+
+/// The same question gives the same answer, point by point.
+#[test]
+fn a_search_repeats_itself() {
+    assert_eq!(evaluations(12, true), evaluations(12, true));
+}
