@@ -12,12 +12,15 @@
 //!   and each pair of axes that matter flipped, each axis scanned inside and refined, until nothing moves. This finds what
 //!   single and paired changes can find; it is no proof.
 
-mod evaluate;
+mod climb;
+mod design;
+mod line;
+mod points;
 mod search;
 
 use serde::{Deserialize, Serialize};
 
-pub use search::extremes;
+pub use search::{extremes, sensitivities};
 
 /// Why a response has no value at a point.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug, Serialize, Deserialize)]

@@ -1,443 +1,383 @@
 //! The search for extremes.
 
-use std::collections::BTreeMap;
+use super::climb::Climb;
+use super::design::{self, ALL_VERTICES, SCAN};
+use super::points::{Goal, Points};
+use super::{Extreme, Method, Options, Range, Response};
 
-use super::evaluate::Evaluator;
-use super::{Extreme, Method, Miss, Options, Range, Response};
-
-/// Up to so many axes every vertex is evaluated (2^7 points).
-const ALL_VERTICES: usize = 7;
-/// Where an axis is scanned inside, as shares of its width; odd shares keep clear of symmetric coincidences.
-const INSIDE: [f64; 5] = [0.13, 0.31, 0.5, 0.69, 0.87];
-/// Rounds of flipping, scanning and refining before a search gives up improving.
-const ROUNDS: usize = 16;
-/// Improvements below this share of the output's size are numerical noise.
+/// Values of an output that differ by less than this share of its magnitude are equal: numerical noise of the solver.
 const NOISE: f64 = 1e-9;
+/// Improvements below this share of an output's whole range are not pursued: no verdict depends on them.
+const LEAST: f64 = 1e-7;
 /// An axis matters if it moves the output by more than this share of the output's whole range.
-const MATTERS: f64 = 1e-4;
-/// An interior extreme is refined to this share of its axis.
-const REFINED: f64 = 1e-9;
+pub(super) const MATTERS: f64 = 1e-4;
+/// Vertices from which each end of an output is sought, where several are better than all their neighbours.
+const STARTS: usize = 6;
 
 /// Lowest and highest value of every output of a response over its whole space.
 pub fn extremes(response: &dyn Response, options: &Options) -> Vec<Range> {
-    let mut search =
-        Search { points: Evaluator::new(response), varying: Vec::new(), shapes: BTreeMap::new() };
-    search.varying = (0..search.points.axes.len())
-        .filter(|&i| search.points.axes[i].low < search.points.axes[i].high)
-        .collect();
-    let nominal = search.points.nominal();
-    let start = search.points.point(&nominal);
-    search.cross(&nominal);
-    if search.varying.len() <= ALL_VERTICES {
-        search.vertices(&nominal);
-    }
+    let mut search = Search::new(response);
     let outputs = response.outputs();
-    let wanted = |output: usize| options.wanted.get(output).copied().unwrap_or((true, true));
-    // First every output takes its own corner, so that each search below starts from the best point that any output saw.
-    for output in 0..outputs {
-        for highest in [false, true] {
-            let (min, max) = wanted(output);
-            if if highest { max } else { min } {
-                search.corner_by_signs(&nominal, output, highest);
-            }
-        }
-    }
-    let mut ranges = Vec::with_capacity(outputs);
-    for output in 0..outputs {
-        let (min, max) = wanted(output);
-        let mut found = Found::default();
-        let min = min.then(|| search.end(output, false, &mut found)).flatten();
-        let max = max.then(|| search.end(output, true, &mut found)).flatten();
-        ranges.push((min, max, found));
-    }
-    // Only now is it known where an output has no value, and which regions were met.
-    let missing = search.missing(outputs);
-    let nominals = &search.points.seen[start].outputs;
-    ranges
-        .into_iter()
-        .zip(missing)
-        .enumerate()
-        .map(|(output, ((min, max, found), missing))| Range {
-            nominal: nominals[output],
-            min,
-            max,
-            interior: found.interior,
-            non_monotone: found.non_monotone,
-            missing,
-            regions: search.points.regions.clone(),
+    let goals: Vec<Goal> = (0..outputs)
+        .flat_map(|output| [false, true].map(|highest| Goal { output, highest }))
+        .filter(|goal| {
+            let (min, max) = options.wanted.get(goal.output).copied().unwrap_or((true, true));
+            if goal.highest { max } else { min }
         })
-        .collect()
+        .collect();
+    let mut found: Vec<Option<usize>> = goals.iter().map(|goal| search.end(*goal)).collect();
+    // What was evaluated for other outputs may be better still.
+    for (goal, found) in goals.iter().zip(&mut found) {
+        *found = search.once_more(*goal, *found);
+    }
+    let ends: Vec<Option<Told>> =
+        goals.iter().zip(&found).map(|(goal, found)| found.map(|at| search.tell(*goal, at))).collect();
+    let mut ranges: Vec<Range> = (0..outputs).map(|output| search.empty(output)).collect();
+    for (goal, told) in goals.iter().zip(ends) {
+        let (Some(told), Some(range)) = (told, ranges.get_mut(goal.output)) else { continue };
+        add_all(&mut range.interior, &told.interior);
+        add_all(&mut range.non_monotone, &told.non_monotone);
+        let slot = if goal.highest { &mut range.max } else { &mut range.min };
+        *slot = Some(told.extreme);
+    }
+    ranges
 }
 
-/// What a search notices on its way.
-#[derive(Default)]
-struct Found {
+/// Changes of every output from the low to the high end of every axis, the others at their nominal values; `None` where
+/// the output has no value at an end. One row an output.
+pub fn sensitivities(response: &dyn Response) -> Vec<Vec<Option<f64>>> {
+    let mut points = Points::new(response);
+    let nominal = points.point(points.axes.iter().map(|axis| axis.nominal).collect());
+    let ends: Vec<(usize, usize)> = (0..points.axes.len())
+        .map(|axis| {
+            let (low, high) = (points.axes[axis].low, points.axes[axis].high);
+            (points.moved(nominal, axis, low), points.moved(nominal, axis, high))
+        })
+        .collect();
+    let change = |(low, high): &(usize, usize), output: usize| {
+        Some(points.value(*high, output).ok()? - points.value(*low, output).ok()?)
+    };
+    (0..response.outputs()).map(|output| ends.iter().map(|end| change(end, output)).collect()).collect()
+}
+
+fn add_all(list: &mut Vec<usize>, axes: &[usize]) {
+    list.extend(axes);
+    list.sort_unstable();
+    list.dedup();
+}
+
+/// What is told of an extreme.
+struct Told {
+    extreme: Extreme,
     interior: Vec<usize>,
     non_monotone: Vec<usize>,
 }
 
-fn add(list: &mut Vec<usize>, axis: usize) {
-    if !list.contains(&axis) {
-        list.push(axis);
-        list.sort_unstable();
-    }
+/// What was seen along one axis through the nominal point, for one output.
+#[derive(Clone, Copy, Default)]
+pub(super) struct Across {
+    /// Highest less lowest value.
+    pub reach: f64,
+    /// The output both rises and falls.
+    pub bent: bool,
+    /// High end less low end.
+    pub effect: f64,
 }
 
-struct Search<'a> {
-    points: Evaluator<'a>,
+pub(super) struct Search<'a> {
+    pub points: Points<'a>,
     /// Axes that vary at all.
-    varying: Vec<usize>,
-    /// For each output: the axes that move it, seen on the cross through nominal and at corners.
-    shapes: BTreeMap<usize, Vec<usize>>,
+    pub varying: Vec<usize>,
+    nominal: usize,
+    /// Evaluated vertices of the design with their levels, one an entry of `varying`.
+    vertices: Vec<(usize, Vec<f64>)>,
+    /// For each output, one entry an axis.
+    across: Vec<Vec<Across>>,
 }
 
-impl Search<'_> {
-    /// Each axis scanned from its low to its high end through `centre`.
-    fn cross(&mut self, centre: &[f64]) {
-        for axis in self.varying.clone() {
-            for to in self.line(axis) {
-                self.points.moved(centre, axis, to);
+impl<'a> Search<'a> {
+    fn new(response: &'a dyn Response) -> Search<'a> {
+        let mut points = Points::new(response);
+        let varying: Vec<usize> =
+            (0..points.axes.len()).filter(|&axis| points.axes[axis].low < points.axes[axis].high).collect();
+        let nominal = points.point(points.axes.iter().map(|axis| axis.nominal).collect());
+        let mut search = Search { points, varying, nominal, vertices: Vec::new(), across: Vec::new() };
+        for axis in search.varying.clone() {
+            for to in search.line(axis) {
+                search.points.moved(nominal, axis, to);
             }
         }
+        for levels in design::vertices(search.varying.len()) {
+            let shares: Vec<f64> = levels.iter().map(|level| (level + 1.0) / 2.0).collect();
+            let index = search.at_shares(&shares);
+            search.vertices.push((index, levels));
+        }
+        for shares in design::scattered(search.varying.len()) {
+            search.at_shares(&shares);
+        }
+        search.across = (0..response.outputs()).map(|output| search.look_across(output)).collect();
+        search
     }
 
-    /// Where an axis is evaluated: ends, nominal, inside.
-    fn line(&self, axis: usize) -> Vec<f64> {
-        let record = &self.points.axes[axis];
-        let mut line = vec![record.low];
-        line.extend(INSIDE.iter().map(|share| record.low + share * (record.high - record.low)));
-        line.push(record.high);
-        if record.nominal > record.low && record.nominal < record.high {
-            line.push(record.nominal);
+    /// Whether every vertex was evaluated.
+    pub fn all_vertices(&self) -> bool {
+        self.varying.len() <= ALL_VERTICES
+    }
+
+    /// The point at the given share of each varying axis.
+    fn at_shares(&mut self, shares: &[f64]) -> usize {
+        let mut at = self.points.at(self.nominal).to_vec();
+        for (&axis, share) in self.varying.iter().zip(shares) {
+            let record = &self.points.axes[axis];
+            at[axis] =
+                if *share == 1.0 { record.high } else { record.low + share * (record.high - record.low) };
         }
+        self.points.point(at)
+    }
+
+    /// Where an axis is scanned, in order: both ends, inside, nominal.
+    pub fn line(&self, axis: usize) -> Vec<f64> {
+        let record = &self.points.axes[axis];
+        let mut line = vec![record.low, record.high, record.nominal];
+        line.extend(SCAN.iter().map(|share| record.low + share * (record.high - record.low)));
+        line.retain(|value| *value >= record.low && *value <= record.high);
         line.sort_by(f64::total_cmp);
         line.dedup();
         line
     }
 
-    fn vertices(&mut self, nominal: &[f64]) {
-        let varying = self.varying.clone();
-        for code in 0..1_u32 << varying.len() {
-            let mut at = nominal.to_vec();
-            for (bit, &axis) in varying.iter().enumerate() {
-                let record = &self.points.axes[axis];
-                at[axis] = if code >> bit & 1 == 1 { record.high } else { record.low };
-            }
-            self.points.point(&at);
-        }
-    }
-
-    /// Evaluates the vertex to which the change along each axis through `centre` points.
-    fn corner_by_signs(&mut self, centre: &[f64], output: usize, highest: bool) -> Option<Vec<f64>> {
-        let mut corner = centre.to_vec();
-        for axis in self.varying.clone() {
-            let record = &self.points.axes[axis];
-            let (low, high) = (record.low, record.high);
-            let low_at = self.points.moved(centre, axis, low);
-            let high_at = self.points.moved(centre, axis, high);
-            let (at_low, at_high) = (
-                self.points.seen[low_at].outputs[output].ok()?,
-                self.points.seen[high_at].outputs[output].ok()?,
-            );
-            corner[axis] = if at_low == at_high {
-                centre[axis]
-            } else if (at_high > at_low) == highest {
-                high
-            } else {
-                low
-            };
-        }
-        self.points.point(&corner);
-        Some(corner)
-    }
-
-    /// The best point seen so far for an output.
-    fn best(&self, output: usize, highest: bool) -> Option<(usize, f64)> {
-        let mut best: Option<(usize, f64)> = None;
-        for (index, seen) in self.points.seen.iter().enumerate() {
-            if let Ok(value) = seen.outputs[output]
-                && best.is_none_or(|(_, best)| better(value, best, highest, 0.0))
-            {
-                best = Some((index, value));
-            }
-        }
-        best
-    }
-
-    /// Size of an output over all points seen: largest magnitude and range.
-    fn size(&self, output: usize) -> (f64, f64) {
-        let values = || self.points.seen.iter().filter_map(|seen| seen.outputs[output].ok());
-        let low = values().fold(f64::INFINITY, f64::min);
-        let high = values().fold(f64::NEG_INFINITY, f64::max);
-        (low.abs().max(high.abs()), high - low)
-    }
-
-    /// One end of an output: from the best point seen, and from the corner that the signs there point to, until nothing moves.
-    fn end(&mut self, output: usize, highest: bool, found: &mut Found) -> Option<Extreme> {
-        let (mut index, mut value) = self.best(output, highest)?;
-        let (magnitude, range) = self.size(output);
-        let noise = (NOISE * magnitude).max(f64::MIN_POSITIVE);
-        if range <= noise {
-            let at = self.points.nominal();
-            let value = self.points.value(&at, output)?;
-            return Some(Extreme { value, at, method: Method::Exact, matters: Vec::new() });
-        }
-        for _ in 0..ROUNDS {
-            let before = value;
-            // Signs derived anew at the candidate.
-            let at = self.points.seen[index].at.clone();
-            if let Some(corner) = self.corner_by_signs(&at, output, highest)
-                && let Some(there) = self.points.value(&corner, output)
-                && better(there, value, highest, noise)
-            {
-                (index, value) = (self.points.point(&corner), there);
-            }
-            (index, value) = self.along_axes(output, highest, index, value, noise);
-            if !better(value, before, highest, noise) {
-                (index, value) = self.pairs(output, highest, index, value, noise);
-            }
-            if !better(value, before, highest, noise) {
-                break;
-            }
-        }
-        let at = self.points.seen[index].at.clone();
-        let matters = self.matters(output, &at);
-        let mut vertex = true;
-        for &axis in &matters {
-            // An axis that does not move the output rests at its nominal value; that is no interior extreme.
-            let record = &self.points.axes[axis];
-            if at[axis] > record.low && at[axis] < record.high {
-                vertex = false;
-                add(&mut found.interior, axis);
-            }
-        }
-        let monotone = self.monotone(output, &at, &matters, noise, found);
-        let method = if monotone && vertex {
-            Method::Monotone
-        } else if vertex && self.varying.len() <= ALL_VERTICES {
-            Method::Vertices
-        } else {
-            Method::Searched
-        };
-        Some(Extreme { value, at, method, matters })
-    }
-
-    /// Moves along one axis at a time, inside too, and refines what lies inside.
-    fn along_axes(
-        &mut self,
-        output: usize,
-        highest: bool,
-        mut index: usize,
-        mut value: f64,
-        noise: f64,
-    ) -> (usize, f64) {
-        for axis in self.varying.clone() {
-            let at = self.points.seen[index].at.clone();
-            let line = if self.moves(output, &at, axis, noise) {
-                self.line(axis)
-            } else {
-                continue;
-            };
-            let mut values: Vec<(f64, usize, Option<f64>)> = Vec::with_capacity(line.len());
-            for to in line {
-                let there = self.points.moved(&at, axis, to);
-                values.push((to, there, self.points.seen[there].outputs[output].ok()));
-            }
-            let best = (0..values.len())
-                .filter(|&i| values[i].2.is_some())
-                .max_by(|&a, &b| signed(values[a].2, highest).total_cmp(&signed(values[b].2, highest)));
-            let Some(best) = best else { continue };
-            let Some(there) = values[best].2 else { continue };
-            if better(there, value, highest, noise) {
-                (index, value) = (values[best].1, there);
-            }
-            if best > 0 && best + 1 < values.len() && !better(value, there, highest, noise) {
-                let bracket = (values[best - 1].0, values[best + 1].0);
-                let (refined, there) = self.refine(output, highest, &at, axis, bracket);
-                if there.is_some_and(|there| better(there, value, highest, noise)) {
-                    (index, value) = (refined, there.unwrap_or(value));
+    fn look_across(&self, output: usize) -> Vec<Across> {
+        let least = self.noise(output);
+        (0..self.points.axes.len())
+            .map(|axis| {
+                if !self.varying.contains(&axis) {
+                    return Across::default();
                 }
-            }
-        }
-        (index, value)
+                let values = self.values_along(self.nominal, axis, output);
+                let low = values.iter().copied().fold(f64::INFINITY, f64::min);
+                let high = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+                let effect = match (values.first(), values.last()) {
+                    (Some(first), Some(last)) => last - first,
+                    _ => 0.0,
+                };
+                Across { reach: (high - low).max(0.0), bent: is_bent(&values, least), effect }
+            })
+            .collect()
     }
 
-    /// Whether flipping an axis at a point moves an output; an axis that does not is neither scanned nor paired.
-    fn moves(&mut self, output: usize, at: &[f64], axis: usize, noise: f64) -> bool {
-        if self.shapes.get(&output).is_some_and(|axes| axes.contains(&axis)) {
-            return true;
-        }
-        let here = self.points.value(at, output);
+    /// Values of an output at the evaluated points of a line through `from`, in order; those without a value left out.
+    fn values_along(&self, from: usize, axis: usize, output: usize) -> Vec<f64> {
+        let mut line = self.line(axis);
         let record = &self.points.axes[axis];
-        let ends = [record.low, record.high];
-        let nominal = self.points.nominal();
-        let (_, range) = self.size(output);
-        let least = noise.max(MATTERS * 1e-2 * range);
-        let mut moved = false;
-        for to in ends {
-            let there = self.points.moved(at, axis, to);
-            let there = self.points.seen[there].outputs[output].ok();
-            moved |= here.zip(there).is_none_or(|(a, b)| (a - b).abs() > least);
+        let width = record.high - record.low;
+        for share in super::climb::GLANCE {
+            line.extend([record.low + share * width, record.high - share * width]);
         }
-        if !moved {
-            // Two opposite changes may cancel between the ends; the cross through nominal saw the inside.
-            let line = self.line(axis);
-            let centre = self.points.value(&nominal, output);
-            for to in line {
-                let there = self.points.moved(&nominal, axis, to);
-                let there = self.points.seen[there].outputs[output].ok();
-                moved |= centre.zip(there).is_some_and(|(a, b)| (a - b).abs() > least);
-            }
-        }
-        if moved {
-            let axes = self.shapes.entry(output).or_default();
-            add(axes, axis);
-        }
-        moved
+        line.push(self.points.at(from)[axis]);
+        line.sort_by(f64::total_cmp);
+        line.dedup();
+        line.into_iter()
+            .filter_map(|to| self.points.known(from, axis, to))
+            .filter_map(|index| self.points.value(index, output).ok())
+            .collect()
     }
 
-    /// Golden-section search inside a bracket of one axis (Kiefer 1953).
-    fn refine(
-        &mut self,
-        output: usize,
-        highest: bool,
-        at: &[f64],
-        axis: usize,
-        (mut low, mut high): (f64, f64),
-    ) -> (usize, Option<f64>) {
-        const SHARE: f64 = 0.618_033_988_749_894_9;
-        let width = self.points.axes[axis].high - self.points.axes[axis].low;
-        let probe = |search: &mut Self, to: f64| {
-            let there = search.points.moved(at, axis, to);
-            (there, search.points.seen[there].outputs[output].ok())
+    /// The least change of an output that counts.
+    pub fn noise(&self, output: usize) -> f64 {
+        let (range, magnitude) = self.points.size(output);
+        (NOISE * magnitude).max(LEAST * range).max(f64::MIN_POSITIVE)
+    }
+
+    pub fn range(&self, output: usize) -> f64 {
+        self.points.size(output).0
+    }
+
+    pub fn across(&self, output: usize, axis: usize) -> Across {
+        self.across[output][axis]
+    }
+
+    /// Searches one end of an output: index of the best point.
+    fn end(&mut self, goal: Goal) -> Option<usize> {
+        let starts = self.starts(goal);
+        let mut best = self.points.best(goal)?;
+        if self.is_flat(goal.output) {
+            return Some(self.nominal).filter(|&nominal| self.points.value(nominal, goal.output).is_ok());
+        }
+        for start in starts {
+            let found = Climb::new(self, goal).from(start);
+            if self.points.score(found, goal) > self.points.score(best, goal) {
+                best = found;
+            }
+        }
+        Some(best)
+    }
+
+    fn is_flat(&self, output: usize) -> bool {
+        let (range, magnitude) = self.points.size(output);
+        range <= NOISE * magnitude
+    }
+
+    /// Where to start: the best point seen; the vertex to which the signs through nominal point; the vertex to which the
+    /// signs over the whole design point; with all vertices known, those that no neighbour beats.
+    fn starts(&mut self, goal: Goal) -> Vec<usize> {
+        let Some(best) = self.points.best(goal) else { return Vec::new() };
+        let mut starts = vec![best];
+        let mut push = |index: usize| {
+            if !starts.contains(&index) {
+                starts.push(index);
+            }
         };
-        let (mut left, mut right) = (high - SHARE * (high - low), low + SHARE * (high - low));
-        let (mut at_left, mut at_right) = (probe(self, left), probe(self, right));
-        while high - low > REFINED.sqrt() * width {
-            if signed(at_left.1, highest) >= signed(at_right.1, highest) {
-                (high, right, at_right) = (right, left, at_left);
-                left = high - SHARE * (high - low);
-                at_left = probe(self, left);
-            } else {
-                (low, left, at_left) = (left, right, at_right);
-                right = low + SHARE * (high - low);
-                at_right = probe(self, right);
-            }
+        if self.all_vertices() {
+            let mut tops = self.tops(goal);
+            tops.sort_by(|a, b| self.points.score(*b, goal).total_cmp(&self.points.score(*a, goal)));
+            tops.truncate(STARTS);
+            tops.into_iter().for_each(&mut push);
+        } else {
+            let through_nominal: Vec<f64> =
+                self.varying.iter().map(|&axis| self.across[goal.output][axis].effect).collect();
+            push(self.corner(goal, best, &through_nominal));
+            let over_design = self.design_effects(goal.output);
+            push(self.corner(goal, best, &over_design));
         }
-        if signed(at_left.1, highest) >= signed(at_right.1, highest) { at_left } else { at_right }
+        starts
     }
 
-    /// Flips two axes at once: what single changes cannot reach.
-    fn pairs(&mut self, output: usize, highest: bool, index: usize, value: f64, noise: f64) -> (usize, f64) {
-        if self.varying.len() <= ALL_VERTICES {
-            return (index, value);
-        }
-        let at = self.points.seen[index].at.clone();
-        let axes: Vec<usize> = self
-            .varying
-            .iter()
-            .copied()
-            .filter(|&axis| self.shapes.get(&output).is_some_and(|s| s.contains(&axis)))
-            .collect();
-        let mut best = (index, value);
-        for (i, &one) in axes.iter().enumerate() {
-            for &other in &axes[i + 1..] {
-                let mut point = at.clone();
-                for axis in [one, other] {
-                    let record = &self.points.axes[axis];
-                    let middle = (record.low + record.high) / 2.0;
-                    point[axis] = if at[axis] < middle { record.high } else { record.low };
-                }
-                let there = self.points.point(&point);
-                if let Ok(found) = self.points.seen[there].outputs[output]
-                    && better(found, best.1, highest, noise)
-                {
-                    best = (there, found);
-                }
+    /// Vertices that no neighbouring vertex beats; all vertices were evaluated in the order of their levels as binary digits.
+    fn tops(&self, goal: Goal) -> Vec<usize> {
+        let score = |code: usize| self.vertices.get(code).map(|(index, _)| self.points.score(*index, goal));
+        (0..self.vertices.len())
+            .filter(|&code| {
+                (0..self.varying.len()).all(|bit| score(code) >= score(code ^ 1 << bit))
+                    && score(code).is_some_and(|score| score > f64::NEG_INFINITY)
+            })
+            .map(|code| self.vertices[code].0)
+            .collect()
+    }
+
+    /// Average change of an output from low to high, over the design; one entry an entry of `varying`.
+    fn design_effects(&self, output: usize) -> Vec<f64> {
+        let mut effects = vec![0.0; self.varying.len()];
+        for (index, levels) in &self.vertices {
+            if let Ok(value) = self.points.value(*index, output) {
+                effects.iter_mut().zip(levels).for_each(|(effect, level)| *effect += level * value);
             }
         }
-        best
+        effects.iter().map(|sum| 2.0 * sum / self.vertices.len().max(1) as f64).collect()
+    }
+
+    /// The vertex to which effects point; an axis without effect stays where `from` has it, so that outputs share corners.
+    fn corner(&mut self, goal: Goal, from: usize, effects: &[f64]) -> usize {
+        let noise = self.noise(goal.output);
+        let mut at = self.points.at(from).to_vec();
+        for (&axis, effect) in self.varying.iter().zip(effects) {
+            let record = &self.points.axes[axis];
+            if effect.abs() > noise {
+                at[axis] = if (*effect > 0.0) == goal.highest { record.high } else { record.low };
+            } else if at[axis] > record.low && at[axis] < record.high {
+                at[axis] = record.low;
+            }
+        }
+        self.points.point(at)
+    }
+
+    /// Climbs again where a point evaluated for another output is better than what was found.
+    fn once_more(&mut self, goal: Goal, found: Option<usize>) -> Option<usize> {
+        let best = self.points.best(goal)?;
+        let found = found?;
+        let noise = self.noise(goal.output);
+        if self.points.score(best, goal) <= self.points.score(found, goal) + noise {
+            return Some(found);
+        }
+        Some(Climb::new(self, goal).from(best))
+    }
+
+    /// An output of which no end was sought yet.
+    fn empty(&self, output: usize) -> Range {
+        Range {
+            nominal: self.points.value(self.nominal, output),
+            min: None,
+            max: None,
+            interior: Vec::new(),
+            non_monotone: Vec::new(),
+            missing: self.points.missing(output),
+            regions: self.points.regions.clone(),
+        }
     }
 
     /// The axes whose change from a point moves the output, most first.
-    fn matters(&mut self, output: usize, at: &[f64]) -> Vec<usize> {
-        let Some(here) = self.points.value(at, output) else { return Vec::new() };
+    fn matters(&mut self, output: usize, index: usize) -> Vec<usize> {
+        let here = self.points.value(index, output).unwrap_or(0.0);
         let mut effects = Vec::new();
         for axis in self.varying.clone() {
             let record = &self.points.axes[axis];
             let mut effect = 0.0_f64;
             for to in [record.low, record.high] {
-                let there = self.points.moved(at, axis, to);
+                let there = self.points.moved(index, axis, to);
                 // Where the other end has no value at all, the axis matters most.
-                let change = self.points.seen[there].outputs[output]
-                    .map_or(f64::INFINITY, |there| (there - here).abs());
+                let change =
+                    self.points.value(there, output).map_or(f64::INFINITY, |there| (there - here).abs());
                 effect = effect.max(change);
             }
             effects.push((axis, effect));
         }
-        let (_, range) = self.size(output);
-        effects.retain(|(_, effect)| *effect > MATTERS * range);
+        let least = self.noise(output).max(MATTERS * self.range(output));
+        effects.retain(|(_, effect)| *effect > least);
         effects.sort_by(|a, b| b.1.total_cmp(&a.1).then(a.0.cmp(&b.0)));
         effects.into_iter().map(|(axis, _)| axis).collect()
     }
 
-    /// Whether the output rises or falls throughout along each axis that matters, through nominal and through `at`. Notes
-    /// each axis along which it does both.
-    fn monotone(
-        &mut self,
-        output: usize,
-        at: &[f64],
-        matters: &[usize],
-        noise: f64,
-        found: &mut Found,
-    ) -> bool {
-        let nominal = self.points.nominal();
-        let mut all = true;
-        for &axis in matters {
-            let mut direction = 0.0_f64;
-            for base in [&nominal[..], at] {
-                let mut last: Option<f64> = None;
-                for to in self.line(axis) {
-                    let there = self.points.moved(base, axis, to);
-                    let Ok(value) = self.points.seen[there].outputs[output] else {
-                        all = false;
-                        continue;
-                    };
-                    if let Some(last) = last {
-                        let change = value - last;
-                        if change.abs() > noise {
-                            if direction * change < 0.0 {
-                                all = false;
-                                add(&mut found.non_monotone, axis);
-                            }
-                            direction = change.signum();
-                        }
-                    }
-                    last = Some(value);
-                }
-            }
+    /// How an end was established, and what was noticed there.
+    fn tell(&mut self, goal: Goal, index: usize) -> Told {
+        let output = goal.output;
+        let value = self.points.value(index, output).unwrap_or(f64::NAN);
+        let at = self.points.at(index).to_vec();
+        let missing = self.points.missing(output).is_some();
+        if self.is_flat(output) && !missing {
+            let extreme = Extreme { value, at, method: Method::Exact, matters: Vec::new() };
+            return Told { extreme, interior: Vec::new(), non_monotone: Vec::new() };
         }
-        all
-    }
-
-    /// For each output the first point at which it has no value.
-    fn missing(&self, outputs: usize) -> Vec<Option<(Miss, Vec<f64>)>> {
-        (0..outputs)
-            .map(|output| {
-                self.points
-                    .seen
-                    .iter()
-                    .find_map(|seen| seen.outputs[output].err().map(|miss| (miss, seen.at.clone())))
+        let matters = self.matters(output, index);
+        let inside = |axis: usize| {
+            let record = &self.points.axes[axis];
+            at[axis] > record.low && at[axis] < record.high
+        };
+        let interior: Vec<usize> = matters.iter().copied().filter(|&axis| inside(axis)).collect();
+        let least = self.noise(output);
+        let bends = self.range(output) * MATTERS;
+        let non_monotone: Vec<usize> = self
+            .varying
+            .iter()
+            .copied()
+            .filter(|&axis| {
+                let through_nominal = self.across[output][axis];
+                (through_nominal.bent && through_nominal.reach > bends)
+                    || (matters.contains(&axis) && is_bent(&self.values_along(index, axis, output), least))
             })
-            .collect()
+            .collect();
+        let vertex = interior.is_empty() && !missing;
+        let method = if vertex && non_monotone.is_empty() {
+            Method::Monotone
+        } else if vertex && self.all_vertices() {
+            Method::Vertices
+        } else {
+            Method::Searched
+        };
+        Told { extreme: Extreme { value, at, method, matters }, interior, non_monotone }
     }
 }
 
-fn better(value: f64, than: f64, highest: bool, by: f64) -> bool {
-    if highest { value > than + by } else { value < than - by }
-}
-
-/// A value such that greater is better; worst where there is none.
-fn signed(value: Option<f64>, highest: bool) -> f64 {
-    value.map_or(f64::NEG_INFINITY, |value| if highest { value } else { -value })
+/// Whether values rise somewhere and fall somewhere, each by more than `least` in all.
+fn is_bent(values: &[f64], least: f64) -> bool {
+    let mut values = values.iter().copied();
+    let Some(first) = values.next() else { return false };
+    // Lowest and highest value so far: a rise counts from the lowest before it, a fall from the highest.
+    let (mut low, mut high) = (first, first);
+    let (mut rises, mut falls) = (false, false);
+    for value in values {
+        rises |= value - low > least;
+        falls |= high - value > least;
+        low = low.min(value);
+        high = high.max(value);
+    }
+    rises && falls
 }
