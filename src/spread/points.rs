@@ -108,10 +108,6 @@ impl<'a> Points<'a> {
         self.codes[index]
     }
 
-    pub fn count(&self) -> usize {
-        self.at.len()
-    }
-
     pub fn value(&self, index: usize, output: usize) -> Result<f64, Miss> {
         self.values[index * self.outputs + output]
     }

@@ -11,8 +11,10 @@ const NOISE: f64 = 1e-9;
 const LEAST: f64 = 1e-7;
 /// An axis matters if it moves the output by more than this share of the output's whole range.
 pub(super) const MATTERS: f64 = 1e-4;
-/// Vertices from which each end of an output is sought, where several are better than all their neighbours.
-const STARTS: usize = 6;
+/// So many of the points that no neighbour beats are starts, among vertices and on a grid.
+const STARTS: usize = 4;
+/// A grid spans so many axes at most.
+const GRID_AXES: usize = 3;
 
 /// Lowest and highest value of every output of a response over its whole space.
 pub fn extremes(response: &dyn Response, options: &Options) -> Vec<Range> {
@@ -93,6 +95,20 @@ pub(super) struct Search<'a> {
     vertices: Vec<(usize, Vec<f64>)>,
     /// For each output, one entry an axis.
     across: Vec<Vec<Across>>,
+}
+
+/// Whether changes of both signs were seen.
+struct Signs {
+    least: f64,
+    up: bool,
+    down: bool,
+}
+
+impl Signs {
+    fn add(&mut self, change: f64) {
+        self.up |= change > self.least;
+        self.down |= change < -self.least;
+    }
 }
 
 impl<'a> Search<'a> {
@@ -198,12 +214,21 @@ impl<'a> Search<'a> {
 
     /// Searches one end of an output: index of the best point.
     fn end(&mut self, goal: Goal) -> Option<usize> {
-        let starts = self.starts(goal);
-        let mut best = self.points.best(goal)?;
+        let first = self.starts(goal).into_iter().next()?;
         if self.is_flat(goal.output) {
             return Some(self.nominal).filter(|&nominal| self.points.value(nominal, goal.output).is_ok());
         }
-        for start in starts {
+        let mut best = Climb::new(self, goal).from(first);
+        let matters = self.matters(goal.output, best);
+        let turning = self.turning(goal.output, best, &matters);
+        // Where all axes but one move the output the same way everywhere, the climb has scanned the only line there is.
+        if turning.len() < 2 {
+            return Some(best);
+        }
+        let mut starts = self.starts(goal);
+        starts.extend(self.vertices_on_top(goal));
+        starts.extend(self.grid_tops(goal, best, &turning));
+        for start in starts.into_iter().filter(|&start| start != first) {
             let found = Climb::new(self, goal).from(start);
             if self.points.score(found, goal) > self.points.score(best, goal) {
                 best = found;
@@ -217,29 +242,135 @@ impl<'a> Search<'a> {
         range <= NOISE * magnitude
     }
 
-    /// Where to start: the best point seen; the vertex to which the signs through nominal point; the vertex to which the
-    /// signs over the whole design point; with all vertices known, those that no neighbour beats.
+    /// Where to start, best first: the best point seen; the vertex to which the signs through nominal point; the vertex to
+    /// which the signs over the whole design point.
     fn starts(&mut self, goal: Goal) -> Vec<usize> {
         let Some(best) = self.points.best(goal) else { return Vec::new() };
         let mut starts = vec![best];
-        let mut push = |index: usize| {
-            if !starts.contains(&index) {
-                starts.push(index);
-            }
-        };
-        if self.all_vertices() {
-            let mut tops = self.tops(goal);
-            tops.sort_by(|a, b| self.points.score(*b, goal).total_cmp(&self.points.score(*a, goal)));
-            tops.truncate(STARTS);
-            tops.into_iter().for_each(&mut push);
-        } else {
+        if !self.all_vertices() {
             let through_nominal: Vec<f64> =
                 self.varying.iter().map(|&axis| self.across[goal.output][axis].effect).collect();
-            push(self.corner(goal, best, &through_nominal));
+            starts.push(self.corner(goal, best, &through_nominal));
             let over_design = self.design_effects(goal.output);
-            push(self.corner(goal, best, &over_design));
+            starts.push(self.corner(goal, best, &over_design));
         }
+        self.best_first(&mut starts, goal);
         starts
+    }
+
+    /// With all vertices known, the best of those that no neighbour beats; otherwise the best of the design.
+    fn vertices_on_top(&self, goal: Goal) -> Vec<usize> {
+        let mut starts = if self.all_vertices() {
+            self.tops(goal)
+        } else {
+            self.vertices.iter().map(|(index, _)| *index).collect()
+        };
+        self.best_first(&mut starts, goal);
+        starts.truncate(STARTS);
+        starts
+    }
+
+    /// The best points of a grid over the axes that turn (three of them at most), the other axes as at `from`: those that
+    /// no neighbour on the grid beats.
+    fn grid_tops(&mut self, goal: Goal, from: usize, turning: &[usize]) -> Vec<usize> {
+        let axes: Vec<usize> = turning.iter().copied().take(GRID_AXES).collect();
+        let levels: usize = if axes.len() < GRID_AXES { 7 } else { 4 };
+        let size = levels.pow(axes.len() as u32);
+        let mut grid = Vec::with_capacity(size);
+        for code in 0..size {
+            let mut at = self.points.at(from).to_vec();
+            for (place, &axis) in axes.iter().enumerate() {
+                let step = code / levels.pow(place as u32) % levels;
+                let record = &self.points.axes[axis];
+                at[axis] = record.low + (record.high - record.low) * step as f64 / (levels - 1) as f64;
+            }
+            grid.push(self.points.point(at));
+        }
+        let score = |code: usize| grid.get(code).map(|&index| self.points.score(index, goal));
+        let mut tops: Vec<usize> = (0..size)
+            .filter(|&code| {
+                (0..axes.len()).all(|place| {
+                    let stride = levels.pow(place as u32);
+                    let step = code / stride % levels;
+                    (step == 0 || score(code) >= score(code - stride))
+                        && (step + 1 == levels || score(code) >= score(code + stride))
+                })
+            })
+            .map(|code| grid[code])
+            .collect();
+        self.best_first(&mut tops, goal);
+        tops.truncate(STARTS);
+        tops
+    }
+
+    fn best_first(&self, starts: &mut Vec<usize>, goal: Goal) {
+        starts.retain(|&start| self.points.value(start, goal.output).is_ok());
+        starts.sort_by(|a, b| {
+            self.points.score(*b, goal).total_cmp(&self.points.score(*a, goal)).then(a.cmp(b))
+        });
+        starts.dedup();
+    }
+
+    /// Axes among those that matter along which an output was seen to rise and to fall: on lines through nominal and
+    /// through `at`, on lines beside it as far as they were evaluated, on every edge between vertices if all are known. In
+    /// the order of `matters`.
+    fn turning(&self, output: usize, at: usize, matters: &[usize]) -> Vec<usize> {
+        let least = self.noise(output);
+        let bends = self.range(output) * MATTERS;
+        let mut turning: Vec<usize> = self
+            .varying
+            .iter()
+            .enumerate()
+            .filter(|&(bit, &axis)| {
+                let nominal = self.across[output][axis];
+                if nominal.bent && nominal.reach > bends {
+                    return true;
+                }
+                if !matters.contains(&axis) {
+                    return false;
+                }
+                if is_bent(&self.values_along(at, axis, output), least) {
+                    return true;
+                }
+                let mut signs = Signs { least: bends.max(least), up: false, down: false };
+                signs.add(nominal.effect);
+                signs.add(self.effect_at(at, axis, output));
+                if self.all_vertices() {
+                    (0..self.vertices.len()).filter(|code| code >> bit & 1 == 0).for_each(|code| {
+                        signs.add(self.edge(code, bit, output));
+                    });
+                } else {
+                    for &other in matters.iter().filter(|&&other| other != axis) {
+                        let record = &self.points.axes[other];
+                        for to in [record.low, record.high] {
+                            if let Some(beside) = self.points.known(at, other, to) {
+                                signs.add(self.effect_at(beside, axis, output));
+                            }
+                        }
+                    }
+                }
+                signs.up && signs.down
+            })
+            .map(|(_, &axis)| axis)
+            .collect();
+        turning.sort_by_key(|axis| matters.iter().position(|other| other == axis).unwrap_or(matters.len()));
+        turning
+    }
+
+    /// Change of an output along an edge between two vertices.
+    fn edge(&self, code: usize, bit: usize, output: usize) -> f64 {
+        let value = |code: usize| {
+            self.vertices.get(code).and_then(|(index, _)| self.points.value(*index, output).ok())
+        };
+        value(code | 1 << bit).zip(value(code)).map_or(0.0, |(high, low)| high - low)
+    }
+
+    /// Change of an output from the low to the high end of an axis through a point, where both ends were evaluated.
+    fn effect_at(&self, at: usize, axis: usize, output: usize) -> f64 {
+        let record = &self.points.axes[axis];
+        let value =
+            |to: f64| self.points.known(at, axis, to).and_then(|index| self.points.value(index, output).ok());
+        value(record.high).zip(value(record.low)).map_or(0.0, |(high, low)| high - low)
     }
 
     /// Vertices that no neighbouring vertex beats; all vertices were evaluated in the order of their levels as binary digits.
@@ -342,18 +473,7 @@ impl<'a> Search<'a> {
             at[axis] > record.low && at[axis] < record.high
         };
         let interior: Vec<usize> = matters.iter().copied().filter(|&axis| inside(axis)).collect();
-        let least = self.noise(output);
-        let bends = self.range(output) * MATTERS;
-        let non_monotone: Vec<usize> = self
-            .varying
-            .iter()
-            .copied()
-            .filter(|&axis| {
-                let through_nominal = self.across[output][axis];
-                (through_nominal.bent && through_nominal.reach > bends)
-                    || (matters.contains(&axis) && is_bent(&self.values_along(index, axis, output), least))
-            })
-            .collect();
+        let non_monotone = self.turning(output, index, &matters);
         let vertex = interior.is_empty() && !missing;
         let method = if vertex && non_monotone.is_empty() {
             Method::Monotone
