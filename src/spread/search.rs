@@ -15,6 +15,8 @@ pub(super) const MATTERS: f64 = 1e-4;
 const STARTS: usize = 4;
 /// A grid spans so many axes at most.
 const GRID_AXES: usize = 3;
+/// All corners of so many axes that turn are starts, where there are too many axes for all vertices.
+const CORNER_AXES: usize = 7;
 
 /// Lowest and highest value of every output of a response over its whole space.
 pub fn extremes(response: &dyn Response, options: &Options) -> Vec<Range> {
@@ -227,7 +229,11 @@ impl<'a> Search<'a> {
         }
         let mut starts = self.starts(goal);
         starts.extend(self.vertices_on_top(goal));
-        starts.extend(self.grid_tops(goal, best, &turning));
+        let levels = if turning.len() < GRID_AXES { 7 } else { 4 };
+        starts.extend(self.grid_tops(goal, best, &turning[..turning.len().min(GRID_AXES)], levels));
+        if turning.len() > GRID_AXES && !self.all_vertices() {
+            starts.extend(self.grid_tops(goal, best, &turning[..turning.len().min(CORNER_AXES)], 2));
+        }
         for start in starts.into_iter().filter(|&start| start != first) {
             let found = Climb::new(self, goal).from(start);
             if self.points.score(found, goal) > self.points.score(best, goal) {
@@ -270,11 +276,9 @@ impl<'a> Search<'a> {
         starts
     }
 
-    /// The best points of a grid over the axes that turn (three of them at most), the other axes as at `from`: those that
-    /// no neighbour on the grid beats.
-    fn grid_tops(&mut self, goal: Goal, from: usize, turning: &[usize]) -> Vec<usize> {
-        let axes: Vec<usize> = turning.iter().copied().take(GRID_AXES).collect();
-        let levels: usize = if axes.len() < GRID_AXES { 7 } else { 4 };
+    /// The best points of a grid of so many levels over some axes, the other axes as at `from`: those that no neighbour on
+    /// the grid beats.
+    fn grid_tops(&mut self, goal: Goal, from: usize, axes: &[usize], levels: usize) -> Vec<usize> {
         let size = levels.pow(axes.len() as u32);
         let mut grid = Vec::with_capacity(size);
         for code in 0..size {
@@ -311,8 +315,8 @@ impl<'a> Search<'a> {
         starts.dedup();
     }
 
-    /// Axes among those that matter along which an output was seen to rise and to fall: on lines through nominal and
-    /// through `at`, on lines beside it as far as they were evaluated, on every edge between vertices if all are known. In
+    /// Axes among those that matter along which an output was seen to rise and to fall: on lines through nominal,
+    /// `at` and both best points seen, on lines beside it as far as they were evaluated, on every edge between vertices if all are known. In
     /// the order of `matters`.
     fn turning(&self, output: usize, at: usize, matters: &[usize]) -> Vec<usize> {
         let least = self.noise(output);
@@ -335,6 +339,11 @@ impl<'a> Search<'a> {
                 let mut signs = Signs { least: bends.max(least), up: false, down: false };
                 signs.add(nominal.effect);
                 signs.add(self.effect_at(at, axis, output));
+                for highest in [false, true] {
+                    if let Some(best) = self.points.best(Goal { output, highest }) {
+                        signs.add(self.effect_at(best, axis, output));
+                    }
+                }
                 if self.all_vertices() {
                     (0..self.vertices.len()).filter(|code| code >> bit & 1 == 0).for_each(|code| {
                         signs.add(self.edge(code, bit, output));
