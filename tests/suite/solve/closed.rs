@@ -218,6 +218,8 @@ fn a_circuit_is_compiled() {
         r_th: None,
         rated_power: None,
         rated_voltage: None,
+        tcr: None,
+        about: None,
         place: qsheaf::source::Place::new(&"circuit.md".into(), 1, 1, 0),
     };
     let mut network = Network {
