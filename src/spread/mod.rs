@@ -12,7 +12,9 @@
 //!   and each pair of axes that matter flipped, each axis scanned inside and refined, until nothing moves. This finds what
 //!   single and paired changes can find; it is no proof.
 
+mod climb;
 mod evaluate;
+mod line;
 mod search;
 
 use serde::{Deserialize, Serialize};
