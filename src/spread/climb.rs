@@ -35,7 +35,7 @@ impl Search<'_> {
     }
 
     /// Takes the other end of single axes as long as that helps.
-    pub fn flips(&mut self, goal: &Goal, mut candidate: Candidate) -> Candidate {
+    fn flips(&mut self, goal: &Goal, mut candidate: Candidate) -> Candidate {
         for _ in 0..ROUNDS {
             let before = candidate;
             for axis in self.varying.clone() {
@@ -56,7 +56,7 @@ impl Search<'_> {
     }
 
     /// Scans each axis that moves the output.
-    fn inside(&mut self, goal: &Goal, mut candidate: Candidate) -> Candidate {
+    pub fn inside(&mut self, goal: &Goal, mut candidate: Candidate) -> Candidate {
         for axis in self.varying.clone() {
             if self.moves(goal, candidate, axis) {
                 candidate = self.scan(goal, candidate, axis);

@@ -90,7 +90,18 @@ impl Search<'_> {
             (0..at.len())
                 .map(|axis| {
                     let [low, high] = ends[axis];
-                    (at[axis] + t * direction[axis] * (high - low)).clamp(low, high)
+                    let to = (at[axis] + t * direction[axis] * (high - low)).clamp(low, high);
+                    // Rounding must not leave a point just beside an end.
+                    let near = 1e-12 * (high - low);
+                    if direction[axis] == 0.0 {
+                        at[axis]
+                    } else if to - low <= near {
+                        low
+                    } else if high - to <= near {
+                        high
+                    } else {
+                        to
+                    }
                 })
                 .collect()
         };

@@ -5,6 +5,8 @@ use super::{Extreme, Method, Miss, Options, Range, Response};
 
 /// Up to so many axes every vertex is evaluated (2^7 points).
 const ALL_VERTICES: usize = 7;
+/// Up to so many axes every combination of low end, middle and high end is evaluated (3^4 points).
+const ALL_LEVELS: usize = 4;
 /// Improvements below this share of the output's size are numerical noise.
 const NOISE: f64 = 1e-9;
 /// An axis matters if it moves the output by more than this share of the output's whole range.
@@ -15,10 +17,10 @@ const FLAT: f64 = 1e-6;
 const RESTARTS: usize = 4;
 /// How many other hills are climbed where an output rises and falls.
 const HILLS: usize = 4;
-/// How many points are flipped to find other hills, at most.
-const STARTS: usize = 128;
+/// How many points are asked whether they lie on another hill, at most.
+const STARTS: usize = 48;
 /// Points that differ by less than this share of every axis belong to one hill.
-const APART: f64 = 0.4;
+const APART: f64 = 0.3;
 
 /// One end of one output.
 pub(super) struct Goal {
@@ -148,7 +150,18 @@ impl Search<'_> {
                 self.vertex(nominal, |bit| scatter(row, bit) >= 0.5);
             }
         }
-        if varying.len() > 1 {
+        if varying.len() <= ALL_LEVELS {
+            for code in 0..3_usize.pow(varying.len() as u32) {
+                let mut at = nominal.to_vec();
+                let mut digits = code;
+                for &axis in &varying {
+                    let [low, high] = self.points.ends(axis);
+                    at[axis] = [low, (low + high) / 2.0, high][digits % 3];
+                    digits /= 3;
+                }
+                self.points.point(&at);
+            }
+        } else {
             for row in 1..=varying.len() + 8 {
                 let mut at = nominal.to_vec();
                 for (bit, &axis) in varying.iter().enumerate() {
@@ -211,7 +224,8 @@ impl Search<'_> {
             if self.conflicts(&goal) {
                 candidate = self.other_hills(&goal, candidate);
             }
-            for start in self.corners_of_courses(&goal, candidate) {
+            let seen = self.best(output, highest);
+            for start in self.corners_of_courses(&goal, candidate).into_iter().chain(seen) {
                 if goal.improves(start, candidate) {
                     candidate = self.climb(&goal, start);
                 }
@@ -223,40 +237,54 @@ impl Search<'_> {
         Some((goal, candidate))
     }
 
-    /// Climbs from further points, best first, as long as single flips lead to a vertex that none led to before: other hills.
+    /// Climbs from further points, best first, that a valley parts from every top climbed so far: other hills.
     fn other_hills(&mut self, goal: &Goal, candidate: Candidate) -> Candidate {
-        let all: Vec<usize> = if self.vertices.is_empty() {
-            (0..self.points.seen.len()).collect()
-        } else {
-            self.vertices.clone()
-        };
-        let mut order: Vec<Candidate> = all
-            .into_iter()
-            .filter_map(|index| self.points.of(index, goal.output).map(|value| Candidate { index, value }))
+        let mut order: Vec<Candidate> = self
+            .points
+            .seen
+            .iter()
+            .enumerate()
+            .filter_map(|(index, seen)| {
+                seen.outputs[goal.output].ok().map(|value| Candidate { index, value })
+            })
             .collect();
         order.sort_by(|a, b| goal.gain(Some(b.value)).total_cmp(&goal.gain(Some(a.value))));
         let mut best = candidate;
-        let mut feet = vec![candidate.index];
+        let mut tops = vec![candidate.index];
         let mut tried = vec![candidate.index];
-        let mut hills = 0;
         for start in order {
-            if hills == HILLS || tried.len() > STARTS {
+            if tops.len() > HILLS || tried.len() > STARTS {
                 break;
             }
-            if self.vertices.is_empty() && !tried.iter().all(|&index| self.apart(index, start.index)) {
+            if !tried.iter().all(|&index| self.apart(index, start.index)) {
                 continue;
             }
             tried.push(start.index);
-            let foot = self.flips(goal, start);
-            if feet.contains(&foot.index) {
+            if tops.iter().any(|&top| self.on_one_hill(goal, start, top)) {
                 continue;
             }
+            // Scanned first: a flip may leap off the hill.
+            let foot = self.inside(goal, start);
             let top = self.climb(goal, foot);
-            feet.extend([foot.index, top.index]);
+            tops.push(top.index);
             best = goal.better_of(best, Some(top));
-            hills += 1;
         }
         best
+    }
+
+    /// Whether no valley lies between a point and a top (Ursem 1999): nothing on the way is worse than the point.
+    fn on_one_hill(&mut self, goal: &Goal, start: Candidate, top: usize) -> bool {
+        let from = self.points.seen[start.index].at.clone();
+        let to = self.points.seen[top].at.clone();
+        [0.25, 0.5, 0.75].into_iter().all(|share| {
+            let at: Vec<f64> = from
+                .iter()
+                .zip(&to)
+                .map(|(from, to)| if from == to { *from } else { from + share * (to - from) })
+                .collect();
+            let gain = goal.gain(self.points.value(&at, goal.output));
+            gain >= goal.gain(Some(start.value)) - goal.noise
+        })
     }
 
     /// Whether two points differ by a good part of the width of some axis.
@@ -380,7 +408,7 @@ impl Search<'_> {
         }
         // The axes that go both ways most.
         both_ways.sort_by(|a, b| b.1.total_cmp(&a.1));
-        both_ways.truncate(ALL_VERTICES);
+        both_ways.truncate(if self.vertices.is_empty() { ALL_VERTICES } else { 0 });
         (0..1_usize << both_ways.len())
             .filter_map(|code| {
                 let mut at = corner.clone();
