@@ -6,6 +6,8 @@ use super::search::{Candidate, Goal, Search};
 const ROUNDS: usize = 40;
 /// Step for slopes beside a kink, as a share of each axis.
 const STEP: f64 = 1e-4;
+/// Axes whose pairs are flipped, at most.
+const MOST_PAIRED: usize = 16;
 
 impl Search<'_> {
     /// Flips single axes, scans each inside, follows the direction of the last round and the ridge along a kink, flips pairs
@@ -160,24 +162,74 @@ impl Search<'_> {
         }
     }
 
-    /// Flips two axes at once: what single changes cannot reach.
+    /// Flips two axes at once: what single changes cannot reach. Single and paired flips together say how the output behaves
+    /// as far as no three axes act on one another; the vertex that is best by that is tried as well.
     fn pairs(&mut self, goal: &Goal, candidate: Candidate) -> Candidate {
         let at = self.points.seen[candidate.index].at.clone();
-        let axes: Vec<usize> =
-            self.varying.iter().copied().filter(|&axis| self.moved_anywhere(goal, axis)).collect();
-        let mut best = candidate;
-        for (i, &one) in axes.iter().enumerate() {
-            for &other in &axes[i + 1..] {
-                let mut point = at.clone();
-                for axis in [one, other] {
-                    let [low, high] = self.points.ends(axis);
-                    point[axis] = if at[axis] < (low + high) / 2.0 { high } else { low };
-                }
-                let index = self.points.point(&point);
-                let found = self.points.of(index, goal.output).map(|value| Candidate { index, value });
-                best = goal.better_of(best, found);
+        let flipped = |search: &Self, axis: usize| {
+            let [low, high] = search.points.ends(axis);
+            if at[axis] < (low + high) / 2.0 { high } else { low }
+        };
+        let mut effects: Vec<(usize, f64)> = Vec::new();
+        for axis in self.varying.clone() {
+            if self.moved_anywhere(goal, axis) {
+                let to = flipped(self, axis);
+                let index = self.points.moved(&at, axis, to);
+                let effect = goal.gain(self.points.of(index, goal.output)) - goal.gain(Some(candidate.value));
+                effects.push((axis, if effect.is_finite() { effect } else { -goal.range }));
             }
         }
-        best
+        effects.sort_by(|a, b| b.1.abs().total_cmp(&a.1.abs()).then(a.0.cmp(&b.0)));
+        effects.truncate(MOST_PAIRED);
+        let count = effects.len();
+        let mut coupled = vec![vec![0.0; count]; count];
+        let mut best = candidate;
+        for i in 0..count {
+            for j in 0..i {
+                let mut point = at.clone();
+                for (axis, _) in [effects[i], effects[j]] {
+                    point[axis] = flipped(self, axis);
+                }
+                let index = self.points.point(&point);
+                let Some(value) = self.points.of(index, goal.output) else { continue };
+                best = goal.better_of(best, Some(Candidate { index, value }));
+                let effect = goal.gain(Some(value)) - goal.gain(Some(candidate.value));
+                coupled[i][j] = effect - effects[i].1 - effects[j].1;
+                coupled[j][i] = coupled[i][j];
+            }
+        }
+        let single: Vec<f64> = effects.iter().map(|(_, effect)| *effect).collect();
+        let mut point = at.clone();
+        for (flip, (axis, _)) in best_flips(&single, &coupled).into_iter().zip(&effects) {
+            if flip {
+                point[*axis] = flipped(self, *axis);
+            }
+        }
+        let index = self.points.point(&point);
+        let found = self.points.of(index, goal.output).map(|value| Candidate { index, value });
+        goal.better_of(best, found)
     }
+}
+
+/// The flips whose single effects and couplings add up to most, among all combinations (in the order of a Gray code, so that
+/// each step changes one flip).
+fn best_flips(single: &[f64], coupled: &[Vec<f64>]) -> Vec<bool> {
+    let mut flips = vec![false; single.len()];
+    let mut best = flips.clone();
+    let mut gains = single.to_vec();
+    let (mut total, mut most) = (0.0, 0.0);
+    for code in 1..1_u64 << single.len() {
+        let axis = code.trailing_zeros() as usize;
+        let sign = if flips[axis] { -1.0 } else { 1.0 };
+        total += sign * gains[axis];
+        flips[axis] = !flips[axis];
+        for (gain, coupling) in gains.iter_mut().zip(&coupled[axis]) {
+            *gain += sign * coupling;
+        }
+        if total > most {
+            most = total;
+            best.clone_from(&flips);
+        }
+    }
+    best
 }

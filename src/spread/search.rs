@@ -7,6 +7,8 @@ use super::{Extreme, Method, Miss, Options, Range, Response};
 const ALL_VERTICES: usize = 7;
 /// Up to so many axes every combination of low end, middle and high end is evaluated (3^4 points).
 const ALL_LEVELS: usize = 4;
+/// Scattered vertices from which each axis is flipped, to see whether outputs go both ways.
+const CROSSED: usize = 6;
 /// Improvements below this share of the output's size are numerical noise.
 const NOISE: f64 = 1e-9;
 /// An axis matters if it moves the output by more than this share of the output's whole range.
@@ -56,16 +58,16 @@ impl Goal {
     }
 }
 
-/// The largest rise and the largest fall that an output was seen to make along an axis, in one step of the search.
+/// Whether an output was seen to rise and to fall along an axis.
 #[derive(Clone, Copy, Default)]
 struct Course {
-    rise: f64,
-    fall: f64,
+    rises: bool,
+    falls: bool,
 }
 
 impl Course {
     fn goes_both_ways(self) -> bool {
-        self.rise > 0.0 && self.fall > 0.0
+        self.rises && self.falls
     }
 }
 
@@ -75,6 +77,8 @@ pub(super) struct Search<'a> {
     pub varying: Vec<usize>,
     /// Indices of all vertices, where they were all evaluated: bit i of the position is the end of the i-th varying axis.
     vertices: Vec<usize>,
+    /// Indices of vertices from which each axis was flipped for all outputs.
+    crossed: Vec<usize>,
     /// For each output and axis.
     courses: Vec<Vec<Course>>,
 }
@@ -87,6 +91,7 @@ pub fn extremes(response: &dyn Response, options: &Options) -> Vec<Range> {
     let mut search = Search {
         varying: (0..axes.len()).filter(|&axis| axes[axis].low < axes[axis].high).collect(),
         vertices: Vec::new(),
+        crossed: Vec::new(),
         courses: vec![vec![Course::default(); axes.len()]; outputs],
         points,
     };
@@ -147,7 +152,16 @@ impl Search<'_> {
         } else {
             for row in 1..=2 * varying.len() {
                 // Bits of van der Corput numbers in prime bases: no two rows alike, ends in balance.
-                self.vertex(nominal, |bit| scatter(row, bit) >= 0.5);
+                let index = self.vertex(nominal, |bit| scatter(row, bit) >= 0.5);
+                if row <= CROSSED {
+                    self.crossed.push(index);
+                    let at = self.points.seen[index].at.clone();
+                    for &axis in &varying {
+                        for end in self.points.ends(axis) {
+                            self.points.moved(&at, axis, end);
+                        }
+                    }
+                }
             }
         }
         if varying.len() <= ALL_LEVELS {
@@ -222,10 +236,13 @@ impl Search<'_> {
         for _ in 0..RESTARTS {
             let before = candidate;
             if self.conflicts(&goal) {
+                // Again, since pairs are flipped only where the output is known to go both ways.
+                candidate = self.climb(&goal, candidate);
                 candidate = self.other_hills(&goal, candidate);
             }
+            let pointed = self.corner_of_courses(&goal, candidate);
             let seen = self.best(output, highest);
-            for start in self.corners_of_courses(&goal, candidate).into_iter().chain(seen) {
+            for start in [pointed, seen].into_iter().flatten() {
                 if goal.improves(start, candidate) {
                     candidate = self.climb(&goal, start);
                 }
@@ -303,8 +320,9 @@ impl Search<'_> {
         let matters = self.matters(goal, candidate);
         let at_ends = |axis: &usize| self.points.ends(*axis).contains(&at[*axis]);
         let vertex = matters.iter().all(at_ends);
-        let pointed = self.corners_of_courses(goal, candidate);
-        let is_pointed_to = pointed.iter().any(|corner| (corner.value - candidate.value).abs() <= goal.noise);
+        let pointed = self.corner_of_courses(goal, candidate);
+        let is_pointed_to =
+            pointed.is_some_and(|corner| (corner.value - candidate.value).abs() <= goal.noise);
         let method = if vertex && whole && is_pointed_to && !self.conflicts(goal) {
             Method::Monotone
         } else if vertex && self.varying.len() <= ALL_VERTICES {
@@ -319,8 +337,8 @@ impl Search<'_> {
     pub fn note(&mut self, goal: &Goal, axis: usize, change: f64) {
         if change.abs() > goal.noise + FLAT * goal.range {
             let course = &mut self.courses[goal.output][axis];
-            course.rise = course.rise.max(change);
-            course.fall = course.fall.max(-change);
+            course.rises |= change > 0.0;
+            course.falls |= change < 0.0;
         }
     }
 
@@ -329,6 +347,10 @@ impl Search<'_> {
         let nominal = self.points.nominal();
         for (bit, axis) in self.varying.clone().into_iter().enumerate() {
             self.line_is_whole(goal, &nominal, axis);
+            for index in self.crossed.clone() {
+                let at = self.points.seen[index].at.clone();
+                self.note_edge(goal, &at, axis);
+            }
             for code in (0..self.vertices.len()).filter(|code| code >> bit & 1 == 0) {
                 let ends = [self.vertices[code], self.vertices[code | 1 << bit]];
                 if let [Some(low), Some(high)] = ends.map(|index| self.points.of(index, goal.output)) {
@@ -370,7 +392,7 @@ impl Search<'_> {
     /// Whether an axis was seen to move an output at all.
     pub fn moved_anywhere(&self, goal: &Goal, axis: usize) -> bool {
         let course = self.courses[goal.output][axis];
-        course.rise > 0.0 || course.fall > 0.0
+        course.rises || course.falls
     }
 
     /// Whether an output both rises and falls along any axis.
@@ -391,34 +413,17 @@ impl Search<'_> {
         })
     }
 
-    /// Vertices to which everything seen of an output points; those of axes along which it goes both ways, all of them, as
-    /// far as they are few.
-    fn corners_of_courses(&mut self, goal: &Goal, candidate: Candidate) -> Vec<Candidate> {
+    /// The vertex to which everything seen of an output points, the axes along which it goes both ways as in the candidate.
+    fn corner_of_courses(&mut self, goal: &Goal, candidate: Candidate) -> Option<Candidate> {
         let mut corner = self.points.seen[candidate.index].at.clone();
-        let mut both_ways = Vec::new();
         for axis in self.varying.clone() {
             let course = self.courses[goal.output][axis];
-            if course.rise != course.fall {
-                corner[axis] =
-                    self.points.ends(axis)[usize::from((course.rise > course.fall) == goal.highest)];
-            }
-            if course.goes_both_ways() && self.vertices.is_empty() {
-                both_ways.push((axis, course.rise.min(course.fall)));
+            if course.rises != course.falls {
+                corner[axis] = self.points.ends(axis)[usize::from(course.rises == goal.highest)];
             }
         }
-        // The axes that go both ways most.
-        both_ways.sort_by(|a, b| b.1.total_cmp(&a.1));
-        both_ways.truncate(if self.vertices.is_empty() { ALL_VERTICES } else { 0 });
-        (0..1_usize << both_ways.len())
-            .filter_map(|code| {
-                let mut at = corner.clone();
-                for (bit, &(axis, _)) in both_ways.iter().enumerate() {
-                    at[axis] = self.points.ends(axis)[code >> bit & 1];
-                }
-                let index = self.points.point(&at);
-                self.points.of(index, goal.output).map(|value| Candidate { index, value })
-            })
-            .collect()
+        let index = self.points.point(&corner);
+        self.points.of(index, goal.output).map(|value| Candidate { index, value })
     }
 
     /// Notes the changes along each axis at the corner opposite to a candidate, where signs differ if they do anywhere.
@@ -431,13 +436,18 @@ impl Search<'_> {
             corner[axis] = if corner[axis] < (low + high) / 2.0 { high } else { low };
         }
         for axis in axes {
-            let changes = self.points.ends(axis).map(|end| {
-                let index = self.points.moved(&corner, axis, end);
-                self.points.of(index, goal.output)
-            });
-            if let [Some(low), Some(high)] = changes {
-                self.note(goal, axis, high - low);
-            }
+            self.note_edge(goal, &corner, axis);
+        }
+    }
+
+    /// Notes the change from end to end of one axis through a point.
+    fn note_edge(&mut self, goal: &Goal, at: &[f64], axis: usize) {
+        let values = self.points.ends(axis).map(|end| {
+            let index = self.points.moved(at, axis, end);
+            self.points.of(index, goal.output)
+        });
+        if let [Some(low), Some(high)] = values {
+            self.note(goal, axis, high - low);
         }
     }
 

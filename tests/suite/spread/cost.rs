@@ -35,10 +35,9 @@ fn evaluations(curved: usize, both_ends: bool) -> usize {
 #[test]
 fn a_note_of_15_axes_and_60_outputs_stays_in_budget() {
     let (monotone, curved, both) = (evaluations(0, false), evaluations(12, false), evaluations(12, true));
-    println!("{monotone} {curved} {both}");
-    assert!(monotone < 6_000, "{monotone}");
-    assert!(curved < 8_000, "{curved}");
-    assert!(both < 16_000, "{both}");
+    assert!(monotone < 4_500, "{monotone}");
+    assert!(curved < 7_200, "{curved}");
+    assert!(both < 14_500, "{both}");
 }
 
 /// The same question gives the same answer, point by point.
