@@ -7,5 +7,6 @@ mod quantity;
 mod report;
 mod solve;
 mod spread;
+mod stress;
 mod worksheet;
 mod yaml;
