@@ -1,5 +1,6 @@
 //! Every test of the project, in one binary.
 
+mod caution;
 mod circuit;
 mod figure;
 mod formula;
