@@ -5,6 +5,8 @@ use super::search::{Candidate, Goal, Search};
 /// Where an axis is scanned inside, as shares of its width. The outer two tell whether the output still improves inwards from
 /// an end; the others keep clear of symmetric coincidences.
 const INSIDE: [f64; 5] = [0.003, 0.21, 0.47, 0.76, 0.997];
+/// The same where everything seen of an output goes one way along the axis.
+const BRIEF: [f64; 3] = [0.003, 0.47, 0.997];
 /// Where another line is scanned, as shares of its length.
 const ALONG: [f64; 6] = [0.003, 0.03, 0.15, 0.4, 0.7, 1.0];
 /// A kink or jump is located to this share of the line.
@@ -23,13 +25,14 @@ struct Probe {
 }
 
 impl Search<'_> {
-    /// Where an axis is evaluated: ends, nominal, inside.
-    pub fn stops(&self, axis: usize) -> Vec<f64> {
+    /// Where an axis is evaluated: ends, nominal, inside; or, briefly, next to the ends and once between.
+    pub fn stops(&self, axis: usize, brief: bool) -> Vec<f64> {
         let record = &self.points.axes[axis];
+        let inside = if brief { &BRIEF[..] } else { &INSIDE[..] };
         let mut stops = vec![record.low];
-        stops.extend(INSIDE.iter().map(|share| record.low + share * (record.high - record.low)));
+        stops.extend(inside.iter().map(|share| record.low + share * (record.high - record.low)));
         stops.push(record.high);
-        if record.nominal > record.low && record.nominal < record.high {
+        if !brief && record.nominal > record.low && record.nominal < record.high {
             stops.push(record.nominal);
         }
         stops.sort_by(f64::total_cmp);
@@ -37,10 +40,27 @@ impl Search<'_> {
         stops
     }
 
-    /// The best point of the line along one axis through a candidate. Notes how the output rises and falls on the way.
+    /// The best point of the line along one axis through a candidate.
     pub fn scan(&mut self, goal: &Goal, candidate: Candidate, axis: usize) -> Candidate {
         let at = self.points.seen[candidate.index].at.clone();
-        let mut stops = self.stops(axis);
+        let brief = !self.goes_both_ways(goal, axis) && self.points.ends(axis).contains(&at[axis]);
+        let mut line = self.probes(goal, &at, axis, brief);
+        if brief && self.goes_both_ways(goal, axis) {
+            line = self.probes(goal, &at, axis, false);
+        }
+        let width = self.points.width(axis);
+        let place = |t: f64| {
+            let mut point = at.clone();
+            point[axis] = t;
+            point
+        };
+        let best = self.best_of_line(goal, &line, width, &place);
+        goal.better_of(candidate, best)
+    }
+
+    /// The stops of an axis and the point itself, evaluated. Notes how the output rises and falls on the way.
+    fn probes(&mut self, goal: &Goal, at: &[f64], axis: usize, brief: bool) -> Vec<Probe> {
+        let mut stops = self.stops(axis, brief);
         if !stops.contains(&at[axis]) {
             stops.push(at[axis]);
             stops.sort_by(f64::total_cmp);
@@ -48,7 +68,7 @@ impl Search<'_> {
         let line: Vec<Probe> = stops
             .into_iter()
             .map(|to| {
-                let index = self.points.moved(&at, axis, to);
+                let index = self.points.moved(at, axis, to);
                 Probe { t: to, index, gain: goal.gain(self.points.of(index, goal.output)) }
             })
             .collect();
@@ -59,14 +79,7 @@ impl Search<'_> {
                 self.note(goal, axis, next - one);
             }
         }
-        let width = self.points.width(axis);
-        let place = |t: f64| {
-            let mut point = at.clone();
-            point[axis] = t;
-            point
-        };
-        let best = self.best_of_line(goal, &line, width, &place);
-        goal.better_of(candidate, best)
+        line
     }
 
     /// The best point from `at` on in a direction (in shares of each axis), up to the end of the space.

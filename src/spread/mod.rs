@@ -17,6 +17,7 @@ mod climb;
 mod evaluate;
 mod line;
 mod search;
+mod starts;
 
 use serde::{Deserialize, Serialize};
 
