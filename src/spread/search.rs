@@ -135,7 +135,7 @@ impl Search<'_> {
         let noise = (NOISE * magnitude).max(f64::MIN_POSITIVE);
         let goal = Goal { output, highest, noise, range };
         let nominal = self.points.nominal();
-        if range <= noise {
+        if range <= 10.0 * noise {
             let index = self.points.point(&nominal);
             let flat = self.points.of(index, output).map(|value| Candidate { index, value });
             return Some((goal, flat.unwrap_or(best)));
@@ -172,7 +172,7 @@ impl Search<'_> {
     /// The extreme with its method and the axes that matter there.
     fn describe(&mut self, goal: &Goal, candidate: Candidate) -> Extreme {
         let at = self.points.seen[candidate.index].at.clone();
-        if goal.range <= goal.noise {
+        if goal.range <= 10.0 * goal.noise {
             return Extreme { value: candidate.value, at, method: Method::Exact, matters: Vec::new() };
         }
         let whole = self.courses_are_whole(goal, &at);
@@ -194,7 +194,7 @@ impl Search<'_> {
 
     /// Notes a change of an output towards the high end of an axis.
     pub fn note(&mut self, goal: &Goal, axis: usize, change: f64) {
-        if change.abs() > goal.noise + FLAT * goal.range {
+        if change.abs() > 10.0 * goal.noise + FLAT * goal.range {
             let course = &mut self.courses[goal.output][axis];
             course.rises |= change > 0.0;
             course.falls |= change < 0.0;
