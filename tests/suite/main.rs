@@ -2,7 +2,9 @@
 
 mod caution;
 mod circuit;
+mod demo;
 mod figure;
+mod fit;
 mod formula;
 mod quantity;
 mod report;

@@ -217,9 +217,9 @@ fn a_circuit_is_compiled() {
         part: None,
         r_th: None,
         rated_power: None,
-        rated_voltage: None,
-        tcr: None,
         about: None,
+        tcr: None,
+        rated_voltage: None,
         place: qsheaf::source::Place::new(&"circuit.md".into(), 1, 1, 0),
     };
     let mut network = Network {
