@@ -183,7 +183,7 @@ fn every_policy_of_the_notebook_can_be_read() {
         assert!(policy.derated(Class::Transistor, Q::JunctionTemperature).is_some());
         count += 1;
     }
-    assert!(count >= 2);
+    assert!(count >= 1);
 }
 
 #[test]
