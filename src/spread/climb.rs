@@ -1,303 +1,235 @@
-//! One search from one start: flips, scans, pairs, until nothing moves.
+//! Climbing from one point until nothing moves.
 
-use super::line::{self, Sample};
-use super::points::Goal;
-use super::search::{MATTERS, Search};
+use super::search::{Candidate, Goal, Search};
 
 /// Rounds before a climb gives up improving.
-const ROUNDS: usize = 24;
-/// Where an axis is looked at from one of its ends, as shares of its width; a closer look follows where that end is not
-/// plainly the best of the line.
-pub(super) const GLANCE: [f64; 3] = [0.03, 0.35, 0.7];
-/// A pair of axes is flipped only if the effect of both is seen to vary by more than this share of what flipping costs.
-const COUPLED: f64 = 0.2;
-/// How far an axis is moved, as a share of its width, while those inside are set anew.
-const NUDGE: f64 = 0.02;
+const ROUNDS: usize = 40;
+/// Step for slopes beside a kink, as a share of each axis.
+const STEP: f64 = 1e-4;
+/// Axes whose pairs are flipped, at most.
+const MOST_PAIRED: usize = 16;
 
-pub(super) struct Climb<'s, 'a> {
-    search: &'s mut Search<'a>,
-    goal: Goal,
-}
-
-impl<'s, 'a> Climb<'s, 'a> {
-    pub fn new(search: &'s mut Search<'a>, goal: Goal) -> Climb<'s, 'a> {
-        Climb { search, goal }
-    }
-
-    /// Index of the point at which nothing moves any more.
-    pub fn from(mut self, start: usize) -> usize {
-        let mut here = start;
+impl Search<'_> {
+    /// Flips single axes, scans each inside, follows the direction of the last round and the ridge along a kink, flips pairs
+    /// where the output is not monotone; until nothing moves.
+    pub fn climb(&mut self, goal: &Goal, start: Candidate) -> Candidate {
+        let mut candidate = start;
         for _ in 0..ROUNDS {
-            let before = here;
-            here = self.flips(here);
-            here = self.inside(here);
-            here = self.onward(before, here);
-            if self.gains(here, before) {
+            let before = candidate;
+            candidate = self.flips(goal, candidate);
+            candidate = self.inside(goal, candidate);
+            if goal.improves(candidate, before) {
+                candidate = self.onwards(goal, before, candidate);
                 continue;
             }
-            here = before;
-            here = self.pairs(here);
-            if here == before {
-                here = self.nudges(here);
+            candidate = self.ridge(goal, candidate);
+            if goal.improves(candidate, before) {
+                continue;
             }
-            if here == before {
+            if self.conflicts(goal) {
+                candidate = self.pairs(goal, candidate);
+            }
+            if !goal.improves(candidate, before) {
                 break;
             }
         }
-        here
+        candidate
     }
 
-    fn score(&self, index: usize) -> f64 {
-        self.search.points.score(index, self.goal)
-    }
-
-    fn gains(&self, there: usize, here: usize) -> bool {
-        self.score(there) > self.score(here) + self.search.noise(self.goal.output)
-    }
-
-    fn ends(&self, axis: usize) -> [f64; 2] {
-        let record = &self.search.points.axes[axis];
-        [record.low, record.high]
-    }
-
-    fn is_inside(&self, index: usize, axis: usize) -> bool {
-        let at = self.search.points.at(index)[axis];
-        let [low, high] = self.ends(axis);
-        at > low && at < high
-    }
-
-    /// Derives the sign of every axis at the point anew: all that gain by a flip are flipped together; where that gains less
-    /// than the best single flip, that one alone. Repeats until none gains.
-    fn flips(&mut self, mut here: usize) -> usize {
-        for _ in 0..2 * self.search.varying.len() + 2 {
-            let mut together = self.search.points.at(here).to_vec();
-            let mut best = here;
-            for axis in self.search.varying.clone() {
-                let mut top = here;
-                for to in self.ends(axis) {
-                    let there = self.search.points.moved(here, axis, to);
-                    if self.gains(there, top) {
-                        top = there;
-                        together[axis] = to;
-                    }
-                }
-                if self.score(top) > self.score(best) {
-                    best = top;
+    /// Takes the other end of single axes as long as that helps.
+    fn flips(&mut self, goal: &Goal, mut candidate: Candidate) -> Candidate {
+        for _ in 0..ROUNDS {
+            let before = candidate;
+            for axis in self.varying.clone() {
+                let at = self.points.seen[candidate.index].at.clone();
+                let here = candidate.value;
+                for to in self.points.ends(axis) {
+                    let index = self.points.moved(&at, axis, to);
+                    let Some(value) = self.points.of(index, goal.output) else { continue };
+                    self.note(goal, axis, (value - here) * (to - at[axis]).signum());
+                    candidate = goal.better_of(candidate, Some(Candidate { index, value }));
                 }
             }
-            if best == here {
-                return here;
-            }
-            let all = self.search.points.point(together);
-            here = if self.score(all) > self.score(best) { all } else { best };
-        }
-        here
-    }
-
-    /// Scans each axis inside, one after the other.
-    fn inside(&mut self, mut here: usize) -> usize {
-        for axis in self.search.varying.clone() {
-            if self.effect(here, axis) > MATTERS * self.search.range(self.goal.output) {
-                here = self.along(here, axis);
+            if !goal.improves(candidate, before) {
+                break;
             }
         }
-        here
+        candidate
     }
 
-    /// The largest change that moving an axis is known to make: to its ends from here, or through nominal.
-    fn effect(&mut self, here: usize, axis: usize) -> f64 {
-        let output = self.goal.output;
-        let Ok(value) = self.search.points.value(here, output) else { return f64::INFINITY };
-        let mut effect = self.search.across(output, axis).reach;
-        for to in self.ends(axis) {
-            let there = self.search.points.moved(here, axis, to);
-            let change = self.search.points.value(there, output).map_or(f64::INFINITY, |v| (v - value).abs());
-            effect = effect.max(change);
+    /// Scans each axis that moves the output.
+    pub fn inside(&mut self, goal: &Goal, mut candidate: Candidate) -> Candidate {
+        for axis in self.varying.clone() {
+            if self.moves(goal, candidate, axis) {
+                candidate = self.scan(goal, candidate, axis);
+            }
         }
-        effect
+        candidate
     }
 
-    /// The best point along one axis.
-    fn along(&mut self, here: usize, axis: usize) -> usize {
-        let goal = self.goal;
-        let at = self.search.points.at(here).to_vec();
-        if self.is_plain(here, axis) {
-            return here;
+    /// Goes on in the direction that a round of single steps took (Hooke and Jeeves 1961), where the candidate lies inside.
+    fn onwards(&mut self, goal: &Goal, before: Candidate, candidate: Candidate) -> Candidate {
+        if self.inner_axes(candidate).is_empty() {
+            return candidate;
         }
-        let mut ts = self.search.line(axis);
-        ts.push(at[axis]);
-        ts.sort_by(f64::total_cmp);
-        ts.dedup();
-        let line = |t: f64| {
-            let mut point = at.clone();
-            point[axis] = t;
-            point
+        let (from, to) = (&self.points.seen[before.index].at, &self.points.seen[candidate.index].at);
+        let direction: Vec<f64> = (0..to.len())
+            .map(|axis| {
+                let width = self.points.width(axis);
+                if width > 0.0 { (to[axis] - from[axis]) / width } else { 0.0 }
+            })
+            .collect();
+        self.along(goal, candidate, &direction)
+    }
+
+    /// Axes strictly inside of which a candidate lies.
+    fn inner_axes(&self, candidate: Candidate) -> Vec<usize> {
+        let at = &self.points.seen[candidate.index].at;
+        let inside = |&axis: &usize| {
+            let [low, high] = self.points.ends(axis);
+            at[axis] > low && at[axis] < high
         };
-        let noise = self.search.noise(goal.output);
-        let points = &mut self.search.points;
-        let samples: Vec<Sample> = ts.iter().map(|&t| line::sample(points, goal, &line, t)).collect();
-        match line::best(points, goal, &line, &samples, noise) {
-            Some(best) if best.score > self.score(here) + noise => best.index,
-            _ => here,
-        }
+        self.varying.iter().copied().filter(inside).collect()
     }
 
-    /// Whether a glance along an axis shows that the end where the point stands is the best of the line: the score falls
-    /// throughout, no device changes its region, nothing bends through nominal, no parabola points to a peak near the end.
-    fn is_plain(&mut self, here: usize, axis: usize) -> bool {
-        let output = self.goal.output;
-        if self.is_inside(here, axis) || self.search.across(output, axis).bent {
-            return false;
+    /// Climbs along the ridge of a kink, where every single axis leads down: the direction that gains most on both sides is
+    /// the shortest vector between their gradients (steepest ascent of Wolfe 1975 for the smaller of two functions).
+    fn ridge(&mut self, goal: &Goal, candidate: Candidate) -> Candidate {
+        let inner: Vec<usize> = self
+            .inner_axes(candidate)
+            .into_iter()
+            .filter(|&axis| self.moves(goal, candidate, axis))
+            .collect();
+        if inner.is_empty() || self.varying.len() < 2 {
+            return candidate;
         }
-        let from = self.search.points.at(here)[axis];
-        let [low, high] = self.ends(axis);
-        let width = high - low;
-        let noise = self.search.noise(output);
-        let shares = GLANCE.into_iter().chain([1.0]);
-        let mut samples = vec![Sample { t: 0.0, index: here, score: self.score(here) }];
-        for share in shares {
-            // Written so that the same point is met from either end.
-            let to = match (from == low, share == 1.0) {
-                (true, true) => high,
-                (true, false) => low + share * width,
-                (false, true) => low,
-                (false, false) => high - share * width,
-            };
-            let index = self.search.points.moved(here, axis, to);
-            if self.search.points.code(index) != self.search.points.code(here) {
-                return false;
+        let at = self.points.seen[candidate.index].at.clone();
+        for axis in inner {
+            let width = self.points.width(axis);
+            let [low, high] = self.points.ends(axis);
+            let sides = [(at[axis] - STEP * width).max(low), (at[axis] + STEP * width).min(high)];
+            let gradients = sides.map(|to| {
+                let mut beside = at.clone();
+                beside[axis] = to;
+                self.gradient(goal, &beside, (to - at[axis]).signum(), axis)
+            });
+            let [Some(one), Some(other)] = gradients else { continue };
+            let direction = self.common_ascent(&at, one, other);
+            let found = self.along(goal, candidate, &direction);
+            if goal.improves(found, candidate) {
+                return found;
             }
-            samples.push(Sample { t: share, index, score: self.score(index) });
         }
-        let falls = samples.windows(2).all(|pair| match pair {
-            [a, b] => b.score <= a.score + noise,
-            _ => true,
-        });
-        let peak = match samples[..] {
-            [a, b, c, ..] => line::peak(&[a, b, c]),
-            _ => None,
-        };
-        falls && peak.is_none_or(|(t, gain)| t <= 0.0 || t >= GLANCE[0] || gain <= noise)
+        candidate
     }
 
-    /// Goes on in the direction in which a round has moved, as long as that gains (Powell 1964): what follows a ridge that
-    /// lies across the axes.
-    fn onward(&mut self, from: usize, here: usize) -> usize {
-        if !self.gains(here, from) {
-            return here;
-        }
-        let at = self.search.points.at(here).to_vec();
-        let mut step: Vec<f64> =
-            at.iter().zip(self.search.points.at(from)).map(|(to, from)| to - from).collect();
-        let mut reach = f64::INFINITY;
-        for (axis, step) in step.iter_mut().enumerate() {
-            let record = &self.search.points.axes[axis];
-            let room = if *step > 0.0 { record.high - at[axis] } else { record.low - at[axis] };
-            if *step == 0.0 || room == 0.0 {
-                *step = 0.0;
-            } else {
-                reach = reach.min(room / *step);
+    /// Gradient (per share of each axis) at a point beside a kink, by differences that stay on its side.
+    fn gradient(&mut self, goal: &Goal, beside: &[f64], away: f64, kinked: usize) -> Option<Vec<f64>> {
+        let here = goal.gain(self.points.value(beside, goal.output));
+        let mut gradient = vec![0.0; beside.len()];
+        for axis in self.varying.clone() {
+            let [low, high] = self.points.ends(axis);
+            let width = high - low;
+            let mut step = 0.1 * STEP * width * if axis == kinked { away } else { 1.0 };
+            if beside[axis] + step > high || beside[axis] + step < low {
+                step = -step;
             }
+            let to = (beside[axis] + step).clamp(low, high);
+            let index = self.points.moved(beside, axis, to);
+            let there = goal.gain(self.points.of(index, goal.output));
+            let moved = (to - beside[axis]) / width;
+            gradient[axis] = if moved == 0.0 { 0.0 } else { (there - here) / moved };
         }
-        if step.iter().filter(|step| **step != 0.0).count() < 2 || !reach.is_finite() {
-            return here;
-        }
-        let line = |t: f64| -> Vec<f64> { at.iter().zip(&step).map(|(at, step)| at + t * step).collect() };
-        let goal = self.goal;
-        let noise = self.search.noise(goal.output);
-        let points = &mut self.search.points;
-        let mut samples = vec![Sample { t: 0.0, index: here, score: points.score(here, goal) }];
-        let mut t = 0.5_f64;
+        gradient.iter().all(|slope| slope.is_finite()).then_some(gradient)
+    }
+
+    /// The shortest vector between two gradients, without the axes along which it leaves the space.
+    fn common_ascent(&self, at: &[f64], mut one: Vec<f64>, mut other: Vec<f64>) -> Vec<f64> {
         loop {
-            t = t.min(reach);
-            let next = line::sample(points, goal, &line, t);
-            let rises = samples.last().is_some_and(|last| next.score > last.score);
-            samples.push(next);
-            if !rises || t == reach {
-                break;
+            let dot =
+                |a: &dyn Fn(usize) -> f64| (0..at.len()).map(|i| a(i) * (other[i] - one[i])).sum::<f64>();
+            let square = dot(&|i| other[i] - one[i]);
+            let share = if square > 0.0 { (-dot(&|i| one[i]) / square).clamp(0.0, 1.0) } else { 0.0 };
+            let direction: Vec<f64> = (0..at.len()).map(|i| one[i] + share * (other[i] - one[i])).collect();
+            let leaves = self.varying.iter().copied().find(|&axis| {
+                let [low, high] = self.points.ends(axis);
+                (at[axis] <= low && direction[axis] < 0.0) || (at[axis] >= high && direction[axis] > 0.0)
+            });
+            match leaves {
+                Some(axis) => (one[axis], other[axis]) = (0.0, 0.0),
+                None => return direction,
             }
-            t *= 3.0;
-        }
-        match line::best(points, goal, &line, &samples, noise) {
-            Some(best) if best.score > points.score(here, goal) => best.index,
-            _ => here,
         }
     }
 
-    /// Flips two axes at once: what single changes cannot reach. With all vertices known there is nothing to find.
-    fn pairs(&mut self, here: usize) -> usize {
-        if self.search.all_vertices() {
-            return here;
+    /// Flips two axes at once: what single changes cannot reach. Single and paired flips together say how the output behaves
+    /// as far as no three axes act on one another; the vertex that is best by that is tried as well.
+    fn pairs(&mut self, goal: &Goal, candidate: Candidate) -> Candidate {
+        let at = self.points.seen[candidate.index].at.clone();
+        let flipped = |search: &Self, axis: usize| {
+            let [low, high] = search.points.ends(axis);
+            if at[axis] < (low + high) / 2.0 { high } else { low }
+        };
+        let mut effects: Vec<(usize, f64)> = Vec::new();
+        for axis in self.varying.clone() {
+            if self.moved_anywhere(goal, axis) {
+                let to = flipped(self, axis);
+                let index = self.points.moved(&at, axis, to);
+                let effect = goal.gain(self.points.of(index, goal.output)) - goal.gain(Some(candidate.value));
+                effects.push((axis, if effect.is_finite() { effect } else { -goal.range }));
+            }
         }
-        let axes = self.coupled(here);
-        let mut best = here;
-        for (i, &(one, one_to)) in axes.iter().enumerate() {
-            for &(other, other_to) in &axes[i + 1..] {
-                let mut point = self.search.points.at(here).to_vec();
-                point[one] = one_to;
-                point[other] = other_to;
-                let there = self.search.points.point(point);
-                if self.gains(there, best) {
-                    best = there;
+        effects.sort_by(|a, b| b.1.abs().total_cmp(&a.1.abs()).then(a.0.cmp(&b.0)));
+        effects.truncate(MOST_PAIRED);
+        let count = effects.len();
+        let mut coupled = vec![vec![0.0; count]; count];
+        let mut best = candidate;
+        for i in 0..count {
+            for j in 0..i {
+                let mut point = at.clone();
+                for (axis, _) in [effects[i], effects[j]] {
+                    point[axis] = flipped(self, axis);
                 }
+                let index = self.points.point(&point);
+                let Some(value) = self.points.of(index, goal.output) else { continue };
+                best = goal.better_of(best, Some(Candidate { index, value }));
+                let effect = goal.gain(Some(value)) - goal.gain(Some(candidate.value));
+                coupled[i][j] = effect - effects[i].1 - effects[j].1;
+                coupled[j][i] = coupled[i][j];
             }
         }
-        best
+        let single: Vec<f64> = effects.iter().map(|(_, effect)| *effect).collect();
+        let mut point = at.clone();
+        for (flip, (axis, _)) in best_flips(&single, &coupled).into_iter().zip(&effects) {
+            if flip {
+                point[*axis] = flipped(self, *axis);
+            }
+        }
+        let index = self.points.point(&point);
+        let found = self.points.of(index, goal.output).map(|value| Candidate { index, value });
+        goal.better_of(best, found)
     }
+}
 
-    /// Axes with the end to flip to, whose effect depends on where the other axes stand: the change from end to end here
-    /// against that through nominal. If it depends on nothing, flipping a second axis cannot make it pay.
-    fn coupled(&mut self, here: usize) -> Vec<(usize, f64)> {
-        let output = self.goal.output;
-        let noise = self.search.noise(output);
-        let mut found = Vec::new();
-        for axis in self.search.varying.clone() {
-            let [low, high] = self.ends(axis);
-            let (at_low, at_high) =
-                (self.search.points.moved(here, axis, low), self.search.points.moved(here, axis, high));
-            let to = if self.search.points.at(here)[axis] < (low + high) / 2.0 { high } else { low };
-            let effect =
-                match (self.search.points.value(at_low, output), self.search.points.value(at_high, output)) {
-                    (Ok(low), Ok(high)) => high - low,
-                    _ => f64::INFINITY,
-                };
-            let varies = (effect - self.search.across(output, axis).effect).abs();
-            if varies > noise && varies > COUPLED * effect.abs() {
-                found.push((axis, to));
-            }
+/// The flips whose single effects and couplings add up to most, among all combinations (in the order of a Gray code, so that
+/// each step changes one flip).
+fn best_flips(single: &[f64], coupled: &[Vec<f64>]) -> Vec<bool> {
+    let mut flips = vec![false; single.len()];
+    let mut best = flips.clone();
+    let mut gains = single.to_vec();
+    let (mut total, mut most) = (0.0, 0.0);
+    for code in 1..1_u64 << single.len() {
+        let axis = code.trailing_zeros() as usize;
+        let sign = if flips[axis] { -1.0 } else { 1.0 };
+        total += sign * gains[axis];
+        flips[axis] = !flips[axis];
+        for (gain, coupling) in gains.iter_mut().zip(&coupled[axis]) {
+            *gain += sign * coupling;
         }
-        found
+        if total > most {
+            most = total;
+            best.clone_from(&flips);
+        }
     }
-
-    /// At a point inside some axes: moves each other axis a little, sets the inner one anew, and goes on in that direction
-    /// if it gains. This follows a ridge with a sharp edge, on which every single axis only falls.
-    fn nudges(&mut self, here: usize) -> usize {
-        let output = self.goal.output;
-        let least = MATTERS * self.search.range(output);
-        let mut matter = Vec::new();
-        for axis in self.search.varying.clone() {
-            if self.effect(here, axis) > least {
-                matter.push(axis);
-            }
-        }
-        let inner: Vec<usize> = matter.iter().copied().filter(|&axis| self.is_inside(here, axis)).collect();
-        for &inside in &inner {
-            for &axis in matter.iter().filter(|&&axis| axis != inside) {
-                let [low, high] = self.ends(axis);
-                let at = self.search.points.at(here)[axis];
-                for to in [at - NUDGE * (high - low), at + NUDGE * (high - low)] {
-                    let to = to.max(low).min(high);
-                    if to == at {
-                        continue;
-                    }
-                    let nudged = self.search.points.moved(here, axis, to);
-                    let there = self.along(nudged, inside);
-                    if self.gains(there, here) {
-                        return self.onward(here, there);
-                    }
-                }
-            }
-        }
-        here
-    }
+    best
 }

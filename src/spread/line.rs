@@ -1,194 +1,215 @@
-//! The best point of one line through the space: scan, then refine (Brent 1973, chapter 5: golden section with parabolas).
+//! Searching along one line of the space: scanning an axis, refining what lies between its points.
 
-use super::points::{Goal, Points};
+use super::search::{Candidate, Goal, Search};
 
-/// A line through the space: where parameter `t` lies.
-pub(super) type Line<'l> = &'l dyn Fn(f64) -> Vec<f64>;
+/// Where an axis is scanned inside, as shares of its width. The outer two tell whether the output still improves inwards from
+/// an end; the others keep clear of symmetric coincidences.
+const INSIDE: [f64; 5] = [0.003, 0.21, 0.47, 0.76, 0.997];
+/// The same where everything seen of an output goes one way along the axis.
+const BRIEF: [f64; 3] = [0.003, 0.47, 0.997];
+/// Where another line is scanned, as shares of its length.
+const ALONG: [f64; 6] = [0.003, 0.03, 0.15, 0.4, 0.7, 1.0];
+/// A kink or jump is located to this share of the line.
+const REFINED: f64 = 1e-9;
+/// Evaluations after which a refinement rests with what it has.
+const MOST_STEPS: usize = 90;
+/// The greater share of a golden section.
+const GOLDEN: f64 = 0.618_033_988_749_894_9;
 
-/// A sample of a line.
+/// One point of a line: parameter, index of the point seen, value such that greater is better (`-∞` where there is none).
 #[derive(Clone, Copy)]
-pub(super) struct Sample {
-    pub t: f64,
-    pub index: usize,
-    pub score: f64,
+struct Probe {
+    t: f64,
+    index: usize,
+    gain: f64,
 }
 
-/// Share of a line's width to which a smooth extreme is located; its value is then good to the square of it.
-const SMOOTH: f64 = 1e-6;
-/// Share of a line's width to which a kink or a jump is located.
-const KINK: f64 = 1e-10;
-
-/// The best point of a line among samples (in order of `t`, two at least) and what refining finds around each promising
-/// local maximum of the score. `noise` is the least change of a score that counts.
-pub(super) fn best(
-    points: &mut Points,
-    goal: Goal,
-    line: Line,
-    samples: &[Sample],
-    noise: f64,
-) -> Option<Sample> {
-    let mut best = samples.iter().copied().max_by(|a, b| a.score.total_cmp(&b.score))?;
-    if best.score == f64::NEG_INFINITY {
-        return None;
+impl Search<'_> {
+    /// Where an axis is evaluated: ends, nominal, inside; or, briefly, next to the ends and once between.
+    pub fn stops(&self, axis: usize, brief: bool) -> Vec<f64> {
+        let record = &self.points.axes[axis];
+        let inside = if brief { &BRIEF[..] } else { &INSIDE[..] };
+        let mut stops = vec![record.low];
+        stops.extend(inside.iter().map(|share| record.low + share * (record.high - record.low)));
+        stops.push(record.high);
+        if !brief && record.nominal > record.low && record.nominal < record.high {
+            stops.push(record.nominal);
+        }
+        stops.sort_by(f64::total_cmp);
+        stops.dedup();
+        stops
     }
-    for [a, b, c] in brackets(points, goal, line, samples, noise) {
-        let gain = (b.score - a.score).max(b.score - c.score);
-        if gain > noise && b.score + gain.min(f64::MAX) > best.score {
-            let found = refine(points, goal, line, [a, b, c], noise);
-            if found.score > best.score {
-                best = found;
+
+    /// The best point of the line along one axis through a candidate.
+    pub fn scan(&mut self, goal: &Goal, candidate: Candidate, axis: usize) -> Candidate {
+        let at = self.points.seen[candidate.index].at.clone();
+        let brief = !self.goes_both_ways(goal, axis) && self.points.ends(axis).contains(&at[axis]);
+        let mut line = self.probes(goal, &at, axis, brief);
+        if brief && self.goes_both_ways(goal, axis) {
+            line = self.probes(goal, &at, axis, false);
+        }
+        let width = self.points.width(axis);
+        let place = |t: f64| {
+            let mut point = at.clone();
+            point[axis] = t;
+            point
+        };
+        let best = self.best_of_line(goal, &line, width, &place);
+        goal.better_of(candidate, best)
+    }
+
+    /// The stops of an axis and the point itself, evaluated. Notes how the output rises and falls on the way.
+    fn probes(&mut self, goal: &Goal, at: &[f64], axis: usize, brief: bool) -> Vec<Probe> {
+        let mut stops = self.stops(axis, brief);
+        if !stops.contains(&at[axis]) {
+            stops.push(at[axis]);
+            stops.sort_by(f64::total_cmp);
+        }
+        let line: Vec<Probe> = stops
+            .into_iter()
+            .map(|to| {
+                let index = self.points.moved(at, axis, to);
+                Probe { t: to, index, gain: goal.gain(self.points.of(index, goal.output)) }
+            })
+            .collect();
+        for pair in line.windows(2) {
+            let [one, next] = pair else { continue };
+            let values = (self.points.of(one.index, goal.output), self.points.of(next.index, goal.output));
+            if let (Some(one), Some(next)) = values {
+                self.note(goal, axis, next - one);
             }
         }
+        line
     }
-    Some(best)
-}
 
-/// Three samples each around a local maximum; one just inside an end only where a parabola points to it.
-fn brackets(points: &mut Points, goal: Goal, line: Line, samples: &[Sample], noise: f64) -> Vec<[Sample; 3]> {
-    let mut found: Vec<[Sample; 3]> = samples
-        .windows(3)
-        .filter_map(|three| <[Sample; 3]>::try_from(three).ok())
-        .filter(|[a, b, c]| b.score >= a.score && b.score >= c.score)
-        .collect();
-    let ends = match samples {
-        [a, b, c] => vec![[*a, *b, *c], [*c, *b, *a]],
-        [a, b, c, .., d, e, f] => vec![[*a, *b, *c], [*f, *e, *d]],
-        [a, b, c, d] => vec![[*a, *b, *c], [*d, *c, *b]],
-        [a, b, c, d, e] => vec![[*a, *b, *c], [*e, *d, *c]],
-        _ => Vec::new(),
-    };
-    for [end, next, third] in ends {
-        if end.score > next.score
-            && let Some((t, gain)) = peak(&[end, next, third])
-            && gain > noise
-            && (t - end.t) * (t - next.t) < 0.0
-        {
-            let there = sample(points, goal, line, t);
-            if there.score > end.score {
-                found.push([end, there, next]);
+    /// The best point from `at` on in a direction (in shares of each axis), up to the end of the space.
+    pub fn along(&mut self, goal: &Goal, candidate: Candidate, direction: &[f64]) -> Candidate {
+        let at = self.points.seen[candidate.index].at.clone();
+        let mut length = f64::INFINITY;
+        for &axis in &self.varying {
+            let [low, high] = self.points.ends(axis);
+            let step = direction[axis] * (high - low);
+            if step > 0.0 {
+                length = length.min((high - at[axis]) / step);
+            } else if step < 0.0 {
+                length = length.min((low - at[axis]) / step);
             }
         }
-    }
-    found
-}
-
-/// Where the parabola through three samples is highest, and by how much it lies there above the first.
-pub(super) fn peak([a, b, c]: &[Sample; 3]) -> Option<(f64, f64)> {
-    let first = (b.score - a.score) / (b.t - a.t);
-    let second = ((c.score - b.score) / (c.t - b.t) - first) / (c.t - a.t);
-    if !(second < 0.0) || !first.is_finite() {
-        return None;
-    }
-    let t = (a.t + b.t) / 2.0 - first / (2.0 * second);
-    Some((t, first * (t - a.t) + second * (t - a.t) * (t - b.t)))
-}
-
-pub(super) fn sample(points: &mut Points, goal: Goal, line: Line, t: f64) -> Sample {
-    let index = points.point(line(t));
-    Sample { t, index, score: points.score(index, goal) }
-}
-
-/// The best point inside a bracket whose middle is no worse than its ends.
-pub(super) fn refine(
-    points: &mut Points,
-    goal: Goal,
-    line: Line,
-    [a, b, c]: [Sample; 3],
-    noise: f64,
-) -> Sample {
-    let width = (c.t - a.t).abs();
-    let (low, high) = if a.t < c.t { (a, c) } else { (c, a) };
-    let mut bracket = Bracket { low, high, best: b, second: b, third: b };
-    bracket.narrow(points, goal, line, SMOOTH * width, noise);
-    let fall = bracket.best.score - bracket.low.score.min(bracket.high.score);
-    if fall > noise / 10.0 {
-        bracket.second = bracket.best;
-        bracket.third = bracket.best;
-        bracket.narrow(points, goal, line, KINK * width, noise);
-    }
-    bracket.best
-}
-
-struct Bracket {
-    low: Sample,
-    high: Sample,
-    best: Sample,
-    second: Sample,
-    third: Sample,
-}
-
-impl Bracket {
-    /// Narrows the bracket until it is about four times as wide as `least`, or flat.
-    fn narrow(&mut self, points: &mut Points, goal: Goal, line: Line, least: f64, noise: f64) {
-        const GOLDEN: f64 = 0.381_966_011_250_105_1;
-        let (mut step, mut before) = (0.0_f64, 0.0_f64);
-        for _ in 0..80 {
-            let best = self.best;
-            let middle = (self.low.t + self.high.t) / 2.0;
-            if (best.t - middle).abs() <= 2.0 * least - (self.high.t - self.low.t) / 2.0 {
-                return;
-            }
-            if best.score - self.low.score.min(self.high.score) < noise / 100.0 {
-                return;
-            }
-            let parabola = self.parabola().filter(|to| {
-                before.abs() > least
-                    && (to - best.t).abs() < before.abs() / 2.0
-                    && *to > self.low.t
-                    && *to < self.high.t
-            });
-            match parabola {
-                Some(to) => {
-                    before = step;
-                    step = to - best.t;
-                    if to - self.low.t < 2.0 * least || self.high.t - to < 2.0 * least {
-                        step = least.copysign(middle - best.t);
+        if !(length.is_finite() && length > 0.0) {
+            return candidate;
+        }
+        let ends: Vec<[f64; 2]> = (0..at.len()).map(|axis| self.points.ends(axis)).collect();
+        let place = |t: f64| {
+            (0..at.len())
+                .map(|axis| {
+                    let [low, high] = ends[axis];
+                    let to = (at[axis] + t * direction[axis] * (high - low)).clamp(low, high);
+                    // Rounding must not leave a point just beside an end.
+                    let near = 1e-12 * (high - low);
+                    if direction[axis] == 0.0 {
+                        at[axis]
+                    } else if to - low <= near {
+                        low
+                    } else if high - to <= near {
+                        high
+                    } else {
+                        to
                     }
-                }
-                None => {
-                    before = if best.t < middle { self.high.t - best.t } else { self.low.t - best.t };
-                    step = GOLDEN * before;
-                }
-            }
-            let to = best.t + if step.abs() >= least { step } else { least.copysign(step) };
-            self.take(sample(points, goal, line, to));
+                })
+                .collect()
+        };
+        let mut line = vec![Probe { t: 0.0, index: candidate.index, gain: goal.gain(Some(candidate.value)) }];
+        for share in ALONG {
+            line.push(self.probe(goal, share * length, &place));
         }
+        let best = self.best_of_line(goal, &line, length, &place);
+        goal.better_of(candidate, best)
     }
 
-    /// Where the parabola through the three best samples is highest.
-    fn parabola(&self) -> Option<f64> {
-        let (x, w, v) = (self.best, self.second, self.third);
-        let r = (x.t - w.t) * (x.score - v.score);
-        let q = (x.t - v.t) * (x.score - w.score);
-        let to = x.t - ((x.t - v.t) * q - (x.t - w.t) * r) / (2.0 * (q - r));
-        to.is_finite().then_some(to)
+    fn probe(&mut self, goal: &Goal, t: f64, place: &dyn Fn(f64) -> Vec<f64>) -> Probe {
+        let index = self.points.point(&place(t));
+        Probe { t, index, gain: goal.gain(self.points.of(index, goal.output)) }
     }
 
-    fn take(&mut self, new: Sample) {
-        if new.score >= self.best.score {
-            if new.t < self.best.t {
-                self.high = self.best;
+    /// The best of a line's points, refined between its neighbours where it is no end.
+    fn best_of_line(
+        &mut self,
+        goal: &Goal,
+        line: &[Probe],
+        width: f64,
+        place: &dyn Fn(f64) -> Vec<f64>,
+    ) -> Option<Candidate> {
+        let mut best = 0;
+        for (i, probe) in line.iter().enumerate() {
+            if probe.gain > line[best].gain {
+                best = i;
+            }
+        }
+        let mut found = *line.get(best)?;
+        if let [before, middle, after] = line.get(best.wrapping_sub(1)..best + 2).unwrap_or_default() {
+            found = self.refine(goal, [*before, *middle, *after], width, place);
+        }
+        self.points.of(found.index, goal.output).map(|value| Candidate { index: found.index, value })
+    }
+
+    /// The top inside a bracket by parabolas through its three points, each second step a golden section (Brent 1973, chapter
+    /// 5), so that kinks and jumps are closed in on as well.
+    fn refine(
+        &mut self,
+        goal: &Goal,
+        [mut left, mut top, mut right]: [Probe; 3],
+        width: f64,
+        place: &dyn Fn(f64) -> Vec<f64>,
+    ) -> Probe {
+        let mut hopeless = 0;
+        for step in 0..MOST_STEPS {
+            let open = right.t - left.t;
+            if open <= REFINED * width || top.gain - left.gain.min(right.gain) <= goal.noise {
+                break;
+            }
+            let golden = if right.t - top.t > top.t - left.t {
+                top.t + (1.0 - GOLDEN) * (right.t - top.t)
             } else {
-                self.low = self.best;
+                top.t - (1.0 - GOLDEN) * (top.t - left.t)
+            };
+            let mut t = golden;
+            if let Some((vertex, gain)) = parabola(left, top, right).filter(|_| step % 2 == 0) {
+                // Two parabolas in a row, with a section between them, that promise nothing.
+                hopeless = if gain <= 0.1 * goal.noise { hopeless + 1 } else { 0 };
+                if hopeless == 2 {
+                    break;
+                }
+                let least = 0.01 * open;
+                t = vertex.clamp(left.t + least, right.t - least);
+                if (t - top.t).abs() < least {
+                    // Beside the top on its wider side, so that the bracket closes.
+                    t = top.t + if golden > top.t { least } else { -least };
+                }
             }
-            self.third = self.second;
-            self.second = self.best;
-            self.best = new;
-            return;
+            if t <= left.t || t >= right.t || t == top.t {
+                break;
+            }
+            let probe = self.probe(goal, t, place);
+            match (probe.gain > top.gain, t < top.t) {
+                (true, true) => (right, top) = (top, probe),
+                (true, false) => (left, top) = (top, probe),
+                (false, true) => left = probe,
+                (false, false) => right = probe,
+            }
         }
-        if new.t < self.best.t {
-            self.low = new;
-        } else {
-            self.high = new;
-        }
-        if new.score >= self.second.score || self.second.t == self.best.t {
-            self.third = self.second;
-            self.second = new;
-        } else if new.score >= self.third.score
-            || self.third.t == self.best.t
-            || self.third.t == self.second.t
-        {
-            self.third = new;
-        }
+        top
     }
+}
+
+/// Vertex of the parabola through three points, and how much it lies above the middle one; `None` where it is no top.
+fn parabola(left: Probe, top: Probe, right: Probe) -> Option<(f64, f64)> {
+    let (a, b) = (top.t - left.t, right.t - top.t);
+    let (slope_a, slope_b) = ((top.gain - left.gain) / a, (right.gain - top.gain) / b);
+    let bend = (slope_b - slope_a) / (a + b);
+    if !bend.is_finite() || bend >= 0.0 {
+        return None;
+    }
+    let slope = (slope_a * b + slope_b * a) / (a + b);
+    let vertex = top.t - slope / (2.0 * bend);
+    vertex.is_finite().then(|| (vertex, -slope * slope / (4.0 * bend)))
 }

@@ -1,11 +1,15 @@
 //! Every test of the project, in one binary.
 
+mod caution;
 mod circuit;
+mod demo;
 mod figure;
+mod fit;
 mod formula;
 mod quantity;
 mod report;
 mod solve;
 mod spread;
+mod stress;
 mod worksheet;
 mod yaml;
