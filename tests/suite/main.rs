@@ -1,5 +1,6 @@
 //! Every test of the project, in one binary.
 
+mod caution;
 mod circuit;
 mod demo;
 mod figure;
@@ -9,6 +10,8 @@ mod house;
 mod quantity;
 mod report;
 mod solve;
+mod spread;
+mod stress;
 mod study;
 mod worksheet;
 mod yaml;
