@@ -18,6 +18,9 @@ impl Search<'_> {
             let before = candidate;
             candidate = self.flips(goal, candidate);
             candidate = self.inside(goal, candidate);
+            if self.is_spent(goal) {
+                break;
+            }
             if goal.improves(candidate, before) {
                 candidate = self.onwards(goal, before, candidate);
                 continue;

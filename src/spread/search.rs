@@ -11,6 +11,10 @@ const NOISE: f64 = 1e-9;
 const MATTERS: f64 = 1e-4;
 /// Changes below this share of the output's whole range are no rise and no fall.
 const FLAT: f64 = 1e-6;
+/// An output that varies by less than this share of its size is not searched for other hills.
+const WORTHWHILE: f64 = 1e-2;
+/// Points that the search for one end may add before it rests with what it has.
+const BUDGET: usize = 600;
 /// How often a search starts again from a corner that what it has seen points to.
 const RESTARTS: usize = 4;
 
@@ -22,6 +26,8 @@ pub(super) struct Goal {
     pub noise: f64,
     /// Difference between the highest and the lowest value seen when the search began.
     pub range: f64,
+    /// Number of points seen at which the search for this end goes on to no further hill, ridge or pair.
+    pub until: usize,
 }
 
 /// A point that may be the extreme.
@@ -133,7 +139,8 @@ impl Search<'_> {
         let best = self.best(output, highest)?;
         let (magnitude, range) = self.size(output);
         let noise = (NOISE * magnitude).max(f64::MIN_POSITIVE);
-        let goal = Goal { output, highest, noise, range };
+        let until = self.points.seen.len() + BUDGET;
+        let goal = Goal { output, highest, noise, range, until };
         let nominal = self.points.nominal();
         if range <= 10.0 * noise {
             let index = self.points.point(&nominal);
@@ -150,7 +157,7 @@ impl Search<'_> {
         self.note_opposite(&goal, candidate);
         for _ in 0..RESTARTS {
             let before = candidate;
-            if self.conflicts(&goal) {
+            if self.conflicts(&goal) && range > WORTHWHILE * magnitude && !self.is_spent(&goal) {
                 // Again, since pairs are flipped only where the output is known to go both ways.
                 candidate = self.climb(&goal, candidate);
                 candidate = self.other_hills(&goal, candidate);
@@ -190,6 +197,11 @@ impl Search<'_> {
             Method::Searched
         };
         Extreme { value: candidate.value, at, method, matters }
+    }
+
+    /// Whether the search for an end has added as many points as it may.
+    pub fn is_spent(&self, goal: &Goal) -> bool {
+        self.points.seen.len() >= goal.until
     }
 
     /// Notes a change of an output towards the high end of an axis.

@@ -9,7 +9,7 @@ const CROSSED: usize = 6;
 /// How many other hills are climbed where an output rises and falls.
 const HILLS: usize = 4;
 /// How many points are asked whether they lie on another hill, at most.
-const STARTS: usize = 48;
+const STARTS: usize = 24;
 /// Points that differ by less than this share of every axis belong to one hill.
 const APART: f64 = 0.3;
 
@@ -107,7 +107,7 @@ impl Search<'_> {
         let mut tops = vec![candidate.index];
         let mut tried = vec![candidate.index];
         for start in order {
-            if tops.len() > HILLS || tried.len() > STARTS {
+            if tops.len() > HILLS || tried.len() > STARTS || self.is_spent(goal) {
                 break;
             }
             if !tried.iter().all(|&index| self.apart(index, start.index)) {

@@ -85,3 +85,25 @@ fn numerical_error_is_no_change() {
     let (clean, noisy) = (search(0.), search(1e-9));
     assert!(noisy <= clean + clean / 4, "{clean} {noisy}");
 }
+
+/// An output without any order (the gain of a transistor that is off) takes its budget and no more.
+#[test]
+fn disorder_ends() {
+    let stage = Stage {
+        axes: axes(&[("x", -1., 0., 1.); 16]),
+        outputs: 1,
+        equations: |at: &[f64], outputs: &mut [Result<f64, Miss>]| {
+            outputs[0] = Ok(error_of(at));
+            0
+        },
+        count: AtomicUsize::new(0),
+    };
+    let found = spread::extremes(&stage, &Options::default());
+    let method = |end: &Option<spread::Extreme>| end.as_ref().map(|end| end.method);
+    assert_eq!(
+        (method(&found[0].min), method(&found[0].max)),
+        (Some(Method::Searched), Some(Method::Searched))
+    );
+    let count = stage.count.load(Ordering::Relaxed);
+    assert!(count < 3_000, "{count}");
+}
