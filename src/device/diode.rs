@@ -16,6 +16,7 @@ pub struct Diode {
     pub leakage: f64,
     pub leakage_e_fold: f64,
     /// Zener voltage (V) at `breakdown_current` (A), its dynamic resistance there is `breakdown_slope / breakdown_current`.
+    #[serde(deserialize_with = "super::maybe_infinite")]
     pub breakdown_voltage: f64,
     pub breakdown_current: f64,
     /// Voltage (V) that multiplies the breakdown current by e.

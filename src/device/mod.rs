@@ -16,3 +16,9 @@ pub const REFERENCE_TEMPERATURE: f64 = 298.15;
 pub fn thermal_voltage(temperature: f64) -> f64 {
     BOLTZMANN * temperature / ELEMENTARY_CHARGE
 }
+
+/// Reads a parameter that is infinite where its effect is switched off; JSON has no infinity and writes `null`.
+fn maybe_infinite<'de, D: serde::Deserializer<'de>>(deserializer: D) -> Result<f64, D::Error> {
+    use serde::Deserialize;
+    Ok(Option::<f64>::deserialize(deserializer)?.unwrap_or(f64::INFINITY))
+}

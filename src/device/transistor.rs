@@ -13,12 +13,16 @@ pub struct Transistor {
     /// Emission coefficient of the transport current, 1 for an ideal junction.
     pub emission_coefficient: f64,
     /// Ideal forward and reverse current gain.
+    #[serde(deserialize_with = "super::maybe_infinite")]
     pub gain_forward: f64,
     pub gain_reverse: f64,
     /// Early voltages (V).
+    #[serde(deserialize_with = "super::maybe_infinite")]
     pub early_voltage_forward: f64,
+    #[serde(deserialize_with = "super::maybe_infinite")]
     pub early_voltage_reverse: f64,
     /// High-level injection knee of the forward transport current (A).
+    #[serde(deserialize_with = "super::maybe_infinite")]
     pub knee_current_forward: f64,
     /// Base-emitter recombination current: saturation value (A) and emission coefficient.
     pub emitter_leakage: f64,

@@ -1,5 +1,12 @@
 //! Findings x Findings -> what moved.
 
+mod compare;
+mod facts;
+mod recall;
+
+pub use compare::compare;
+pub use recall::{Unreadable, recall};
+
 use serde::{Deserialize, Serialize};
 
 use crate::quantity::{Kind, Shown, Unit};
@@ -19,6 +26,23 @@ pub struct Moves {
     pub verdicts: Vec<VerdictMove>,
     /// Prose, cautions, the title or anything else that a reader sees changed.
     pub wording: bool,
+    /// Why the earlier findings could not be compared with the new ones; the lists are empty then.
+    #[serde(default)]
+    pub incomparable: Option<String>,
+}
+
+/// What made a note move, as far as its two findings tell.
+#[derive(Clone, Copy, PartialEq, Eq, Debug, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Cause {
+    /// Neither inputs nor program changed.
+    Nothing,
+    /// The same inputs, computed by another version of the program.
+    Program,
+    /// Other inputs, computed by the same version.
+    Inputs,
+    /// Other inputs and another version: what moved may come from either.
+    Both,
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, Debug, Serialize, Deserialize)]
@@ -64,9 +88,12 @@ pub struct VerdictMove {
 }
 
 impl VerdictMove {
-    /// Whether the verdict itself changed, not only its margin.
+    /// Whether the verdict itself changed, not only its margin, its reason or the number of its assumptions.
     pub fn flipped(&self) -> bool {
-        self.old.as_ref().map(|(verdict, _)| verdict) != self.new.as_ref().map(|(verdict, _)| verdict)
+        let sort = |state: &Option<(Verdict, Shown)>| {
+            state.as_ref().map(|(verdict, _)| std::mem::discriminant(verdict))
+        };
+        sort(&self.old) != sort(&self.new)
     }
 }
 
@@ -79,5 +106,28 @@ impl Moves {
             && self.results.is_empty()
             && self.verdicts.is_empty()
             && !self.wording
+            && self.incomparable.is_none()
+    }
+
+    /// Whether inputs, program or both changed.
+    pub fn cause(&self) -> Cause {
+        match (self.program.is_some(), !self.inputs.is_empty() || !self.files.is_empty()) {
+            (false, false) => Cause::Nothing,
+            (true, false) => Cause::Program,
+            (false, true) => Cause::Inputs,
+            (true, true) => Cause::Both,
+        }
+    }
+
+    /// Whether anything moved that somebody who checked the earlier issue has not seen. Only a change of the worksheet
+    /// that touches neither a value nor a word (a name, a date or a revision in its head) leaves signatures standing.
+    pub fn clears_signatures(&self) -> bool {
+        self.program.is_some()
+            || self.incomparable.is_some()
+            || self.wording
+            || !self.inputs.is_empty()
+            || !self.results.is_empty()
+            || !self.verdicts.is_empty()
+            || self.files.iter().any(|(path, _)| !path.ends_with(".md"))
     }
 }

@@ -437,5 +437,6 @@ pub(super) fn moves(moves: &Moves) -> Value {
             })
         }).collect::<Vec<_>>(),
         "wording": moves.wording,
+        "incomparable": moves.incomparable.as_deref().map(rich),
     })
 }

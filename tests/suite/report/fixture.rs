@@ -983,7 +983,7 @@ pub fn findings() -> Findings {
         }],
         parts: vec![Part {
             name: "LBN-250".into(), kind: PartKind::Npn, description: "NPN switching transistor, invented for this notebook".into(),
-            rows: vec![], ratings: vec![], digest: Digest::of(b"part"), place: place(1),
+            rows: vec![], ratings: vec![], pulses: vec![], digest: Digest::of(b"part"), place: place(1),
         }],
         validity: vec![
             "Junction temperatures between −40 and 150 °C.".into(),
@@ -1045,6 +1045,7 @@ pub fn moves() -> Moves {
             },
         ],
         wording: true,
+        incomparable: None,
     }
 }
 
