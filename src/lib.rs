@@ -22,3 +22,4 @@ pub mod study;
 pub mod redline;
 pub mod figure;
 pub mod report;
+pub mod notebook;
