@@ -71,6 +71,8 @@ pub struct TransistorLaw {
     pub gain: [f64; 2],
     /// Shift of V_BE (V) at coordinate -1 and 1 (transport and base current together; the gain is kept).
     pub v_be: [f64; 2],
+    /// Base resistance (Ω) at coordinate -1 and 1 of the V_BE axis: what V_BE(sat) rows ask for beyond the shift.
+    pub base_resistance: [f64; 2],
     /// Collector resistance (Ω) and reverse gain at coordinate -1 and 1.
     pub collector_resistance: [f64; 2],
     pub gain_reverse: [f64; 2],
@@ -174,6 +176,7 @@ impl TransistorLaw {
             saturation_current: nominal.saturation_current * main,
             gain_forward: nominal.gain_forward * gain,
             emitter_leakage: nominal.emitter_leakage * side / gain,
+            base_resistance: from_nominal(nominal.base_resistance, self.base_resistance, v_be),
             collector_resistance: resistance,
             gain_reverse: from_nominal(nominal.gain_reverse, self.gain_reverse, saturation),
             cutoff_current: nominal.cutoff_current * from_nominal(1.0, self.leakage, leakage),

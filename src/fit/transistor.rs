@@ -43,6 +43,7 @@ pub(super) fn fit(part: &Part) -> Result<Model, Diagnostics> {
         nominal,
         gain: [1.0, 1.0],
         v_be: [0.0, 0.0],
+        base_resistance: [nominal.base_resistance; 2],
         collector_resistance: [0.0, nominal.collector_resistance],
         gain_reverse: [nominal.gain_reverse; 2],
         leakage: [0.0, leakage],
@@ -481,7 +482,11 @@ fn v_be_axis(part: &Part, law: &mut TransistorLaw) -> SpreadAxis {
     let rows = part.rows.iter().filter(|row| {
         matches!(row.quantity, RowQuantity::BaseEmitterVoltage | RowQuantity::BaseEmitterSaturation)
     });
+    let has_on = part.rows_of(RowQuantity::BaseEmitterVoltage).any(|row| row.max.is_some());
     for row in rows.clone() {
+        if row.quantity == RowQuantity::BaseEmitterSaturation && has_on {
+            continue;
+        }
         let Some(model) = v_be_of(&law.nominal, row) else { continue };
         // A shift at the reference temperature acts in proportion to the temperature elsewhere.
         let scale = row.at.t_j / REFERENCE_TEMPERATURE;
@@ -499,6 +504,14 @@ fn v_be_axis(part: &Part, law: &mut TransistorLaw) -> SpreadAxis {
         }
     }
     law.v_be = [ends[0].map_or(0.0, |(_, shift)| shift), ends[1].map_or(0.0, |(_, shift)| shift)];
+    // What the rows of V_BE(sat) ask for beyond that is the base resistance's.
+    let mut shifted = law.specimen(&[0.0, 1.0, 0.0, 0.0]);
+    for row in part.rows_of(RowQuantity::BaseEmitterSaturation) {
+        if let (Some(max), Some(i_b), Some(at)) = (row.max, row.at.i_b, forced(&shifted, row)) {
+            shifted.base_resistance += ((max * (1.0 + 1e-9) - at.v_be) / i_b).max(0.0);
+        }
+    }
+    law.base_resistance = [law.nominal.base_resistance, shifted.base_resistance];
     let first = rows.clone().next();
     let wanted = |which: &str| {
         first.map_or_else(
@@ -514,23 +527,37 @@ fn v_be_axis(part: &Part, law: &mut TransistorLaw) -> SpreadAxis {
 }
 
 fn saturation_axis(part: &Part, law: &mut TransistorLaw, errors: &mut Diagnostics) -> SpreadAxis {
-    let mut deciding: Option<&Row> = None;
-    let mut most = law.nominal.collector_resistance;
-    for row in part.rows_of(RowQuantity::CollectorEmitterSaturation) {
-        let Some(max) = row.max else { continue };
-        match resistance_for(&law.nominal, row, max * (1.0 + 1e-9)) {
-            Some(resistance) => {
-                if deciding.is_none() || resistance > most {
-                    deciding = Some(row);
-                }
-                most = most.max(resistance);
-            }
-            None => errors.push(
+    let mut limits: Vec<(&Row, f64)> = part
+        .rows_of(RowQuantity::CollectorEmitterSaturation)
+        .filter_map(|row| Some((row, row.max? * (1.0 + 1e-9))))
+        .collect();
+    limits.sort_by(|a, b| a.0.at.i_c.unwrap_or(0.0).total_cmp(&b.0.at.i_c.unwrap_or(0.0)));
+    for (row, _) in &limits {
+        if forced(&law.nominal, row).is_none() {
+            errors.push(
                 Diagnostic::error(&row.place, "the fitted model cannot carry this row's I_C with its I_B")
                     .expected("a forced gain I_C/I_B below the gain that the rows of h_FE give"),
-            ),
+            );
         }
     }
+    // At high current the resistance speaks, at low current the reverse gain: the row at the highest current sets the one,
+    // the others lower the other as far as they need, and what is still missing goes to the resistance.
+    let mut worst = law.nominal;
+    let needs = |worst: &Transistor, row: &Row, max: f64| resistance_for(worst, row, max).unwrap_or(0.0);
+    if let Some((top, others)) = limits.split_last() {
+        for _ in 0..2 {
+            worst.collector_resistance = needs(&worst, top.0, top.1).max(law.nominal.collector_resistance);
+            for (row, max) in others {
+                worst.gain_reverse = reverse_gain_for(&worst, row, *max).min(worst.gain_reverse);
+            }
+        }
+        let most = limits.iter().map(|(row, max)| needs(&worst, row, *max)).fold(0.0, f64::max);
+        worst.collector_resistance = most.max(law.nominal.collector_resistance);
+    }
+    law.gain_reverse = [law.nominal.gain_reverse, worst.gain_reverse];
+    let most = worst.collector_resistance;
+    let deciding = limits.iter().map(|(row, _)| *row).find(|row| row.source.origin.is_weak());
+    let deciding = deciding.or_else(|| limits.first().map(|(row, _)| *row));
     // Nothing keeps less than the junctions alone.
     law.collector_resistance = [0.0, most];
     let current = part
@@ -543,6 +570,27 @@ fn saturation_axis(part: &Part, law: &mut TransistorLaw, errors: &mut Diagnostic
         low: Bound::Sourced,
         high: bound(deciding, format!("V_CE(sat) max at or above the working I_C and I_C/I_B{at}")),
     }
+}
+
+/// The reverse gain at which a row's V_CE(sat) reaches `wanted`, no less than a fiftieth.
+fn reverse_gain_for(transistor: &Transistor, row: &Row, wanted: f64) -> f64 {
+    let reaches = |log_gain: f64| {
+        let tried = Transistor { gain_reverse: libm::exp(log_gain), ..*transistor };
+        forced(&tried, row).is_some_and(|at| at.v_ce >= wanted)
+    };
+    let (mut low, mut high) = (libm::log(0.02), libm::log(transistor.gain_reverse));
+    if reaches(high) || low >= high {
+        return transistor.gain_reverse;
+    }
+    for _ in 0..20 {
+        let middle = (low + high) / 2.0;
+        if reaches(middle) {
+            low = middle;
+        } else {
+            high = middle;
+        }
+    }
+    libm::exp(low)
 }
 
 fn leakage_axis(part: &Part) -> SpreadAxis {

@@ -73,6 +73,8 @@ pub struct Input {
     pub kind: Kind,
     pub unit: Unit,
     pub text: String,
+    /// A tolerance or range was written.
+    pub bounded: bool,
     /// Where it comes from; `None` counts as an assumption.
     pub source: Option<Source>,
     pub place: Place,
@@ -269,4 +271,27 @@ pub struct Mark {
     pub name: String,
     pub x: f64,
     pub y: f64,
+}
+
+impl FigureFinding {
+    /// A figure that cannot be drawn, with the reason.
+    pub fn not_shown(reason: &str) -> FigureFinding {
+        let axis = || AxisFinding {
+            symbol: Math::Row { parts: Vec::new() },
+            title: String::new(),
+            unit: Unit::none(),
+            low: 0.0,
+            high: 1.0,
+            logarithmic: false,
+        };
+        let title = format!("NOT SHOWN: {reason}");
+        FigureFinding {
+            alt: title.clone(),
+            title,
+            x: axis(),
+            y: axis(),
+            curves: Vec::new(),
+            marks: Vec::new(),
+        }
+    }
 }

@@ -2,6 +2,7 @@
 
 mod circuit;
 mod figure;
+mod fit;
 mod formula;
 mod quantity;
 mod report;

@@ -217,6 +217,8 @@ fn a_circuit_is_compiled() {
         part: None,
         r_th: None,
         rated_power: None,
+        about: None,
+        tcr: None,
         rated_voltage: None,
         place: qsheaf::source::Place::new(&"circuit.md".into(), 1, 1, 0),
     };
