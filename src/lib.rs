@@ -23,3 +23,4 @@ pub mod redline;
 pub mod figure;
 pub mod report;
 pub mod notebook;
+pub mod cli;

@@ -15,16 +15,25 @@ use super::sheet::Contents;
 use super::shelf::{self, Aside, Shelf};
 use super::{Notebook, workers};
 
-/// What computes a note and what prints it, with the version of the program that does.
-pub struct Press<'a> {
+/// What computes a note, with the version of the program that does.
+#[derive(Clone, Copy)]
+pub struct Calculation<'a> {
     pub program: &'a str,
     /// Bundle and path of the worksheet -> findings.
     pub study: &'a (dyn Fn(&Bundle, &str) -> Result<Findings, Diagnostics> + Sync),
-    pub typeset: &'a Typeset,
+}
+
+/// What makes a note: the calculation, and what prints it.
+#[derive(Clone, Copy)]
+pub struct Press<'a> {
+    pub calculation: Calculation<'a>,
+    /// Findings, issue, what moved and bundle -> PDF.
+    pub typeset: &'a Typeset<'a>,
 }
 
 /// Findings, issue, what moved and bundle -> PDF.
-pub type Typeset = dyn Fn(&Findings, &Issue, Option<&Moves>, &Bundle) -> Result<Vec<u8>, Diagnostics> + Sync;
+pub type Typeset<'a> =
+    dyn Fn(&Findings, &Issue, Option<&Moves>, &Bundle) -> Result<Vec<u8>, Diagnostics> + Sync + 'a;
 
 /// How to issue.
 #[derive(Clone, PartialEq, Eq, Debug)]
@@ -87,7 +96,7 @@ pub fn issue(notebook: &Notebook, press: &Press, order: &Order, progress: &mut d
             return outcome;
         }
     };
-    let scanned = scan(notebook, &register, press.program, order.workers);
+    let scanned = scan(notebook, &register, press.calculation.program, order.workers);
     outcome.diagnostics.extend(scanned.diagnostics);
     outcome.failed = scanned.failed;
     let all = scanned.sheets.len();
@@ -154,7 +163,7 @@ fn make(
 ) -> Result<Made, Diagnostics> {
     let sheet = &standing.sheet;
     let (bundle, inputs) = sheet.bundle(notebook, Contents::Bytes)?;
-    let mut findings = study(notebook, press, &bundle, &sheet.file.path)?;
+    let mut findings = study(notebook, &press.calculation, &bundle, &sheet.file.path)?;
     let mut warnings = findings.warnings.clone();
     notebook.parts.translate(&mut warnings);
     let moves = standing.last.map(|last| moved(&notebook.root, last, &findings));
@@ -168,7 +177,7 @@ fn make(
         number,
         date: order.date.clone().unwrap_or_else(|| sheet.date.clone()),
         status: Status::Issued,
-        program: press.program.to_owned(),
+        program: press.calculation.program.to_owned(),
     };
     let pdf = (press.typeset)(&findings, &issue, moves.as_ref(), &bundle).map_err(|errors| {
         told(notebook, errors, &format!("{}: this note cannot be typeset", sheet.file.path))
@@ -183,7 +192,7 @@ fn make(
         revision: findings.note.revision.clone(),
         date: issue.date,
         title: findings.note.title.clone(),
-        program: press.program.to_owned(),
+        program: press.calculation.program.to_owned(),
         schema: findings.schema,
         signatures_cleared: cleared,
         verdicts: Verdicts::of(&findings),
@@ -198,11 +207,11 @@ fn make(
 /// The study of one note, its errors at the places that people edit.
 fn study(
     notebook: &Notebook,
-    press: &Press,
+    calculation: &Calculation,
     bundle: &Bundle,
     worksheet: &str,
 ) -> Result<Findings, Diagnostics> {
-    (press.study)(bundle, worksheet)
+    (calculation.study)(bundle, worksheet)
         .map_err(|errors| told(notebook, errors, &format!("{worksheet}: this note cannot be computed")))
 }
 
@@ -348,7 +357,7 @@ pub struct Recalculated<R> {
 /// Returns the notes in the order of their worksheets, the worksheets that failed, and what is wrong.
 pub fn recalculate<R: Send>(
     notebook: &Notebook,
-    press: &Press,
+    calculation: &Calculation,
     workers: usize,
     wanted: &dyn Fn(&Standing) -> bool,
     keep: &(dyn Fn(Findings, Option<Moves>) -> R + Sync),
@@ -362,7 +371,7 @@ pub fn recalculate<R: Send>(
             return (Vec::new(), notebook.worksheets.clone(), diagnostics);
         }
     };
-    let scanned = scan(notebook, &register, press.program, workers);
+    let scanned = scan(notebook, &register, calculation.program, workers);
     diagnostics.extend(scanned.diagnostics);
     let mut failed = scanned.failed;
     let all = scanned.sheets.len();
@@ -374,7 +383,7 @@ pub fn recalculate<R: Send>(
         &chosen,
         |standing| {
             let (bundle, _) = standing.sheet.bundle(notebook, Contents::Bytes)?;
-            let findings = study(notebook, press, &bundle, &standing.sheet.file.path)?;
+            let findings = study(notebook, calculation, &bundle, &standing.sheet.file.path)?;
             let moves = standing.last.map(|last| moved(&notebook.root, last, &findings));
             Ok::<R, Diagnostics>(keep(findings, moves))
         },

@@ -21,13 +21,17 @@ pub mod register;
 mod scan;
 mod sheet;
 pub mod shelf;
+mod uses;
 mod workers;
 
-pub use issue::{Event, Issued, Order, Outcome, Press, Recalculated, Typeset, issue, recalculate};
+pub use issue::{
+    Calculation, Event, Issued, Order, Outcome, Press, Recalculated, Typeset, issue, recalculate,
+};
 pub use parts::{Parts, Record, ranges};
 pub use register::Register;
 pub use scan::{Scan, Standing, scan};
 pub use sheet::{Contents, Sheet};
+pub use uses::{Uses, uses};
 
 use std::path::{Path, PathBuf};
 

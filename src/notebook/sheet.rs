@@ -119,7 +119,8 @@ impl Sheet {
         let mut errors = Diagnostics::default();
         let mut files: Vec<(Role, File)> = vec![(Role::Worksheet, self.file.clone())];
         if notebook.settings.is_none() {
-            errors.push(Diagnostic::bare("the notebook's settings cannot be read"));
+            // What is wrong with them stands among the notebook's problems.
+            return Err(errors);
         }
         files.extend(notebook.settings_file.iter().map(|file| (Role::Settings, file.clone())));
         files.extend(notebook.policy.iter().map(|file| (Role::Policy, file.clone())));
