@@ -308,6 +308,9 @@ impl Maker<'_> {
     fn passive(&self) -> Vec<Demand> {
         let (power, voltage) = (self.element.rated_power.as_ref(), self.element.rated_voltage.as_ref());
         let power = self.written(power, Q::Dissipation, self.symbol("P"), "power");
+        // A lamp is named by its working point; what it may be given at most is the record's to say.
+        let voltage = voltage
+            .filter(|_| self.element.kind != ElementKind::Filament || self.rating(Q::Voltage).is_none());
         let voltage = self.written(voltage, Q::Voltage, self.either_way("V"), "voltage");
         let mut out = Vec::new();
         let rated = |demand: &Demand| demand.rating.is_some();

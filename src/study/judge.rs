@@ -283,21 +283,26 @@ impl<'a> Judge<'a> {
     /// What a reader should know of an output's behaviour over the space: interior extremes, axes along which it is not
     /// monotone, and regions that change between corners.
     pub fn flags(&self, output: usize, wanted: impl Fn(usize) -> bool) -> Vec<String> {
-        let mut flags: Vec<String> = Vec::new();
-        let mut add = |flag: String| {
-            if !flags.contains(&flag) {
-                flags.push(flag);
-            }
-        };
+        let mut inside: Vec<String> = Vec::new();
+        let mut turning: Vec<String> = Vec::new();
         for case in self.cases.iter().filter(|case| wanted(case.condition)) {
-            let range = &case.ranges[output];
-            let name = |axis: &usize| case.response.axes()[*axis].name.clone();
-            for axis in &range.interior {
-                add(format!("extreme inside the range of {}", name(axis)));
+            let Some(range) = case.ranges.get(output) else { continue };
+            for (axes, names) in [(&range.interior, &mut inside), (&range.non_monotone, &mut turning)] {
+                for &axis in axes {
+                    let name = &case.response.axes()[axis].name;
+                    if !names.contains(name) {
+                        names.push(name.clone());
+                    }
+                }
             }
-            for axis in range.non_monotone.iter().filter(|axis| !range.interior.contains(axis)) {
-                add(format!("not monotone along {}", name(axis)));
-            }
+        }
+        turning.retain(|name| !inside.contains(name));
+        let mut flags = Vec::new();
+        if !inside.is_empty() {
+            flags.push(format!("extreme inside the range of {}", inside.join(", ")));
+        }
+        if !turning.is_empty() {
+            flags.push(format!("not monotone along {}", turning.join(", ")));
         }
         flags
     }

@@ -7,6 +7,7 @@ use crate::circuit::{self, Element, Network};
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::fit::{self, Law, Model};
 use crate::part::{self, Part, PartKind};
+use crate::quantity::{Origin, Source};
 use crate::settings::{self, Settings};
 use crate::source::{Bundle, Digest};
 use crate::stress::policy::{self, Policy};
@@ -96,7 +97,7 @@ impl Material {
             settings,
             worksheet,
             models,
-            in_place: built.inputs.into_iter().map(in_place).collect(),
+            in_place: built.inputs.into_iter().map(|value| in_place(value, &built.network)).collect(),
             network: built.network,
             policy,
             warnings,
@@ -136,8 +137,15 @@ impl Material {
     }
 }
 
-fn in_place(value: circuit::InPlace) -> Input {
+/// A value written in place. Where it names no source but its element names a part, the designer chose the value and the
+/// part's order fixes the tolerance; without either it counts as an assumption.
+fn in_place(value: circuit::InPlace, network: &Network) -> Input {
     let quantity = value.sourced.quantity;
+    let part = network.elements.iter().find(|e| e.designator == value.symbol).and_then(|e| e.part.as_deref());
+    let chosen = part.filter(|_| quantity.bounded).map(|part| Source {
+        origin: Origin::Specification,
+        text: format!("chosen here; tolerance as ordered with {part}"),
+    });
     Input {
         symbol: value.symbol,
         description: value.description,
@@ -146,7 +154,7 @@ fn in_place(value: circuit::InPlace) -> Input {
         unit: quantity.unit,
         text: quantity.text,
         bounded: quantity.bounded,
-        source: value.sourced.source,
+        source: value.sourced.source.or(chosen),
         place: value.sourced.place,
     }
 }

@@ -2,6 +2,7 @@
 //!
 //! ```text
 //! material   bundle -> what a note is made of: worksheet, parts, models, network, policy
+//! names      -> symbols with dimensions, checked wherever they are used
 //! compile    -> symbols with dimensions and slots; tapes; what is observed
 //! cases      -> every condition, cold and in equilibrium, as a Response, searched for extremes
 //! judge      -> criteria and tabulated results; stressed -> stress lines, cautions
@@ -13,6 +14,7 @@ mod compile;
 mod findings;
 mod judge;
 mod material;
+mod names;
 mod points;
 mod prose;
 mod response;

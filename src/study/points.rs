@@ -39,7 +39,7 @@ fn operating_point(compiled: &Compiled<'_>, case: &Case<'_>, condition: &str) ->
         }
     };
     let branches = case.response.branches(&nominal);
-    finding.attempts = point.attempts.iter().map(|attempt| attempt.text().to_owned()).collect();
+    finding.attempts = case.response.attempts.iter().map(|attempt| attempt.text().to_owned()).collect();
     finding.nodes = network.nodes.iter().cloned().zip(point.voltages.iter().copied()).skip(1).collect();
     for ((element, branch), at) in network.elements.iter().zip(&branches).zip(&point.elements) {
         match branch {

@@ -138,6 +138,8 @@ pub(super) struct InCondition<'a> {
     axes: Vec<Axis>,
     moves: Vec<Moves>,
     start: Option<crate::solve::Solution>,
+    /// How the nominal point was found, with no neighbour to start from.
+    pub attempts: Vec<solve::Attempt>,
     work: Mutex<Work>,
 }
 
@@ -189,6 +191,7 @@ impl<'a> InCondition<'a> {
             axes,
             moves,
             start: None,
+            attempts: Vec::new(),
             work: Mutex::new(Work {
                 slots: vec![0.0; space.slots()],
                 coordinates: vec![[0.0; AXES]; elements],
@@ -198,7 +201,10 @@ impl<'a> InCondition<'a> {
                 point: space.plan.blank(),
             }),
         };
-        condition.start = condition.point(&condition.nominal(), &[]).ok().map(|point| point.solution);
+        if let Ok(point) = condition.point(&condition.nominal(), &[]) {
+            condition.attempts = point.attempts;
+            condition.start = Some(point.solution);
+        }
         condition
     }
 

@@ -1,11 +1,14 @@
 //! Every test of the project, in one binary.
 
 mod circuit;
+mod demo;
 mod figure;
 mod fit;
 mod formula;
+mod house;
 mod quantity;
 mod report;
 mod solve;
+mod study;
 mod worksheet;
 mod yaml;

@@ -95,6 +95,7 @@ fn input(
         spread: Spread { low: si(low), nominal: si(nominal), high: si(high) },
         kind: unit.kind,
         text: format!("{low} to {high} {u}"),
+        bounded: true,
         unit,
         source: from,
         place: place(12),
