@@ -123,7 +123,7 @@ fn verified(findings: &Findings) -> Verified {
         judged.push(Judged {
             sort: "assertion",
             label: step.label.clone(),
-            text: step.spoken.clone(),
+            text: step.text.clone(),
             condition: step.condition.clone(),
             thermal: String::new(),
             clause: None,

@@ -21,7 +21,7 @@ pub(super) struct AtBias {
 /// (Dowell and Jarratt 1971), halving where that is slow.
 fn crossing(mut low: f64, mut high: f64, f: impl Fn(f64) -> f64) -> Option<f64> {
     let (mut at_low, mut at_high) = (f(low), f(high));
-    if !(at_high >= 0.0) {
+    if at_high.is_nan() || at_high < 0.0 {
         return None;
     }
     if at_low >= 0.0 {

@@ -226,8 +226,9 @@ fn least_squares(points: &[(f64, f64)], columns: &dyn Fn(f64) -> [f64; 3], set: 
         for row in 0..n {
             if row != pivot {
                 let factor = matrix[row][pivot] / matrix[pivot][pivot];
-                for column in pivot..=n {
-                    matrix[row][column] -= factor * matrix[pivot][column];
+                let above = matrix[pivot].clone();
+                for (value, above) in matrix[row].iter_mut().zip(above).skip(pivot) {
+                    *value -= factor * above;
                 }
             }
         }

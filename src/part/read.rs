@@ -239,7 +239,7 @@ fn condition(node: &Node, quantity: RowQuantity, errors: &mut Diagnostics) -> Op
             _ => Kind::of(Dimension::VOLT),
         };
         let si = measured(value, kind, "a bias value", errors)?.spread.nominal;
-        if name != "T_j" && !(si > 0.0) {
+        if name != "T_j" && si <= 0.0 {
             errors.push(
                 Diagnostic::error(&value.place, format!("{name} is not above zero"))
                     .expected("its magnitude"),
@@ -313,7 +313,7 @@ fn columns(node: &Node, quantity: RowQuantity, errors: &mut Diagnostics) -> Opti
             | RowQuantity::ZenerTemperatureCoefficient
             | RowQuantity::ResistanceCoefficient
     );
-    if !signed && [min, typ, max].into_iter().flatten().any(|value| !(value > 0.0)) {
+    if !signed && [min, typ, max].into_iter().flatten().any(|value| value <= 0.0) {
         errors.push(error("a value is not above zero").expected("magnitudes, for NPN and PNP alike"));
         return None;
     }
@@ -363,7 +363,7 @@ fn read_ratings(
             _ => (measured(value, quantity.kind(), what, errors), None),
         };
         let (Some(limit), Some(source)) = (limit, own) else { continue };
-        if !(limit.spread.nominal > 0.0) {
+        if limit.spread.nominal <= 0.0 {
             errors.push(Diagnostic::error(&value.place, format!("{} is not above zero", key.name)));
             continue;
         }

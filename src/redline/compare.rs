@@ -13,6 +13,8 @@ use super::{FileMove, InputMove, Moves, ResultMove, VerdictMove};
 
 /// Values that differ by less than this share of their size are the same: nobody could print the difference.
 const SAME: f64 = 1e-9;
+/// A margin whose verdict stands counts as moved from this share of it on: less would print alike.
+const MARGIN: f64 = 1e-3;
 
 /// What moved from `old`, the findings of issue `since`, to `new`.
 ///
@@ -156,8 +158,9 @@ fn verdicts(old: &Findings, new: &Findings) -> Vec<VerdictMove> {
             None => out.push(row(found, None, state(found))),
             Some(before) => {
                 let size = before.size.max(found.size);
+                let margins = self::size(&[&before.margin, &found.margin]);
                 if !same_verdict(&before.verdict, &found.verdict)
-                    || !same(&before.margin, &found.margin, size)
+                    || !same(&before.margin, &found.margin, size.max(margins * MARGIN / SAME))
                 {
                     out.push(row(found, state(before), state(found)));
                 }

@@ -210,6 +210,8 @@ pub struct CriterionFinding {
 #[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
 pub struct Step {
     pub label: String,
+    /// As written, without label and condition.
+    pub text: String,
     /// Index of the derivation block it stands in.
     pub block: usize,
     pub condition: String,

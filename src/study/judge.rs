@@ -21,12 +21,15 @@ const SHARE_OF_VALUE: f64 = 0.01;
 /// What happens to all outputs when a gap at a point is missed.
 type Missed = (Gap, Vec<Result<f64, Miss>>);
 
+/// A case and the bits of a point of its space.
+type Corner = (usize, Vec<u64>);
+
 /// Judges against all cases of a note; keeps what it evaluated, because many results share a corner.
 pub(super) struct Judge<'a> {
     pub compiled: &'a Compiled<'a>,
     pub cases: &'a [Case<'a>],
     pub conditions: &'a [Stated<'a>],
-    missed: RefCell<BTreeMap<(usize, Vec<u64>), std::rc::Rc<Vec<Missed>>>>,
+    missed: RefCell<BTreeMap<Corner, std::rc::Rc<Vec<Missed>>>>,
 }
 
 /// One end of one output in one case.

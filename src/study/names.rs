@@ -99,7 +99,7 @@ pub(super) fn check_order(
             DerivationKind::Define { name, formula } => {
                 // After an early use the line's kind is unknown; its own name still counts as known further down.
                 let kind = if early { None } else { diagnostics_of(kind_of(formula, kinds), diagnostics) };
-                if !defined_at.get(name.value.as_str()).is_some_and(|(at, _)| *at != i) {
+                if defined_at.get(name.value.as_str()).is_none_or(|(at, _)| *at == i) {
                     kinds.entry(name.value.clone()).or_insert(kind.unwrap_or(Kind::NONE));
                 }
             }

@@ -186,6 +186,7 @@ pub(super) fn steps(
                 let value = evaluate(formula);
                 Step {
                     label: line.label.clone(),
+                    text: format!("{} = {}", name.value, formula.text),
                     block: line.block,
                     condition: condition.name.to_owned(),
                     symbol: Some(formula::symbol(&name.value)),
@@ -202,7 +203,7 @@ pub(super) fn steps(
                     ),
                 }
             }
-            DerivationKind::Assert { relation, .. } => {
+            DerivationKind::Assert { relation, text } => {
                 let side = |expr: &formula::Expr| {
                     evaluate(&Formula { expr: expr.clone(), text: String::new(), place: line.place.clone() })
                 };
@@ -216,6 +217,7 @@ pub(super) fn steps(
                 }
                 Step {
                     label: line.label.clone(),
+                    text: text.clone(),
                     block: line.block,
                     condition: condition.name.to_owned(),
                     symbol: None,

@@ -428,6 +428,7 @@ fn step(n: usize, label: &str, s: Option<Math>, symbols: Math, numbers: Math, v:
     let unit = unit(u);
     Step {
         label: label.into(),
+        text: String::new(),
         block: usize::from(n > 5),
         condition: "on".into(),
         symbol: s,
