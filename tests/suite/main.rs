@@ -6,6 +6,7 @@ mod figure;
 mod fit;
 mod formula;
 mod house;
+mod notebook;
 mod quantity;
 mod report;
 mod solve;
