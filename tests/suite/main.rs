@@ -1,6 +1,7 @@
 //! Every test of the project, in one binary.
 
 mod circuit;
+mod cli;
 mod demo;
 mod figure;
 mod fit;
@@ -8,6 +9,7 @@ mod formula;
 mod house;
 mod notebook;
 mod quantity;
+mod redline;
 mod report;
 mod solve;
 mod study;
