@@ -1,5 +1,6 @@
 //! Every test of the project, in one binary.
 
+mod caution;
 mod circuit;
 mod cli;
 mod demo;
@@ -12,6 +13,8 @@ mod quantity;
 mod redline;
 mod report;
 mod solve;
+mod spread;
+mod stress;
 mod study;
 mod worksheet;
 mod yaml;
