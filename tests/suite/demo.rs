@@ -127,13 +127,20 @@ fn times() {
         let start = std::time::Instant::now();
         let found = study(&files, sheet).unwrap();
         let studied = start.elapsed();
-        let issue =
-            Issue { number: 1, date: found.note.date.clone(), status: Status::Issued, program: String::new() };
+        let issue = Issue {
+            number: 1,
+            date: found.note.date.clone(),
+            status: Status::Issued,
+            program: String::new(),
+        };
         let sources = report::source(&found, &issue, None, &files).unwrap();
         let sourced = start.elapsed() - studied;
         let pdf = report::compile(&sources).unwrap();
         let all = start.elapsed();
-        println!("{sheet}: studied {studied:.1?}, sources {sourced:.1?}, typeset {:.1?}", all - studied - sourced);
+        println!(
+            "{sheet}: studied {studied:.1?}, sources {sourced:.1?}, typeset {:.1?}",
+            all - studied - sourced
+        );
         let path = std::path::Path::new(env!("CARGO_TARGET_TMPDIR")).join(sheet.replace(".md", ".pdf"));
         std::fs::write(path, pdf).unwrap();
     }
