@@ -153,6 +153,9 @@ struct Made {
     warnings: Diagnostics,
 }
 
+/// The index of a note among those due, and what became of it; the outer error is what a worker said as it broke down.
+type Finished = (usize, Result<Result<Made, Diagnostics>, String>);
+
 /// Studies and typesets one note and writes its files aside.
 fn make(
     notebook: &Notebook,
@@ -269,7 +272,7 @@ impl Desk<'_> {
     }
 
     /// Names the files of finished notes and registers them all in one step.
-    fn register(&mut self, batch: Vec<(usize, Result<Result<Made, Diagnostics>, String>)>, due: &[Standing]) {
+    fn register(&mut self, batch: Vec<Finished>, due: &[Standing]) {
         let mut registered = Vec::new();
         for (index, result) in batch {
             let Some(standing) = due.get(index) else { continue };

@@ -188,23 +188,23 @@ pub fn read(root: &Path) -> Result<Register, Diagnostics> {
     let restore = "the register as the last run left it; restore it from a copy";
     let bytes = std::fs::read(&full)
         .map_err(|error| Diagnostic::error(&place(1, 1), format!("cannot be read: {error}")))?;
-    let malformed = |error: serde_json::Error| {
-        let at = place(error.line(), error.column());
-        Diagnostics::from(
-            Diagnostic::error(&at, format!("the register is damaged: {error}")).expected(restore),
-        )
-    };
-    #[derive(Deserialize)]
-    struct Cover {
-        register: u32,
+    let register: Register = serde_json::from_slice(&bytes).map_err(|error| {
+        #[derive(Deserialize)]
+        struct Cover {
+            register: u32,
+        }
+        match serde_json::from_slice::<Cover>(&bytes) {
+            // Another version's register is sound, only not for this one.
+            Ok(cover) if cover.register != FORMAT => other_format(cover.register, &place(1, 1)),
+            _ => {
+                let at = place(error.line(), error.column());
+                Diagnostic::error(&at, format!("the register is damaged: {error}")).expected(restore)
+            }
+        }
+    })?;
+    if register.register != FORMAT {
+        return Err(other_format(register.register, &place(1, 1)).into());
     }
-    let cover: Cover = serde_json::from_slice(&bytes).map_err(malformed)?;
-    if cover.register != FORMAT {
-        let message = format!("the register has format {}", cover.register);
-        let error = Diagnostic::error(&place(1, 1), message);
-        return Err(error.expected(format!("format {FORMAT}, which this version writes")).into());
-    }
-    let register: Register = serde_json::from_slice(&bytes).map_err(malformed)?;
     let mut errors = Diagnostics::default();
     for (note, issues) in &register.notes {
         let ascending = issues.windows(2).all(|pair| pair[0].issue < pair[1].issue);
@@ -218,6 +218,11 @@ pub fn read(root: &Path) -> Result<Register, Diagnostics> {
         errors.push(Diagnostic::error(&place(1, 1), message).expected(restore));
     }
     if errors.has_errors() { Err(errors) } else { Ok(register) }
+}
+
+fn other_format(found: u32, place: &Place) -> Diagnostic {
+    Diagnostic::error(place, format!("the register has format {found}"))
+        .expected(format!("format {FORMAT}, which this version writes"))
 }
 
 /// No register: right for a new notebook, and only for that.

@@ -134,7 +134,7 @@ fn attach(
         .map_err(|error| Diagnostic::bare(format!("the findings cannot be written as JSON: {error}")))?;
     add("findings.json", text.into(), "data", "Everything that this note prints, as data");
     for (path, file) in &files.files {
-        let (relation, what) = match path.rsplit('.').next() {
+        let (relation, what) = match extension(path).as_deref() {
             Some("md") => ("source", "The worksheet that this note was computed from"),
             Some("yaml" | "yml") => {
                 ("source", "Part record, policy or settings that this note was computed from")
@@ -147,8 +147,13 @@ fn attach(
     Ok(Value::Array(list))
 }
 
+/// What a path ends with, in lower case; a record cut out of a file (`parts/diodes.yaml#LBD-1`) is what its file is.
+fn extension(path: &str) -> Option<String> {
+    path.split('#').next()?.rsplit('.').next().map(str::to_ascii_lowercase)
+}
+
 fn mime(name: &str) -> &'static str {
-    match name.rsplit('.').next().map(str::to_ascii_lowercase).as_deref() {
+    match extension(name).as_deref() {
         Some("md") => "text/markdown",
         Some("yaml" | "yml") => "application/yaml",
         Some("json") => "application/json",

@@ -22,6 +22,18 @@ impl Digest {
     pub fn of(bytes: &[u8]) -> Digest {
         Digest(Sha256::digest(bytes).into())
     }
+
+    /// A digest as it is printed; `None` for anything but 64 hexadecimal digits.
+    pub fn parse(text: &str) -> Option<Digest> {
+        let (pairs, []) = text.as_bytes().as_chunks::<2>() else { return None };
+        let digits: &[[u8; 2]; 32] = pairs.try_into().ok()?;
+        let value = |digit: u8| char::from(digit).to_digit(16).map(|value| value as u8);
+        let mut bytes = [0; 32];
+        for (byte, [high, low]) in bytes.iter_mut().zip(digits) {
+            *byte = value(*high)? << 4 | value(*low)?;
+        }
+        Some(Digest(bytes))
+    }
 }
 
 impl fmt::Display for Digest {
@@ -38,20 +50,20 @@ impl Serialize for Digest {
 
 impl<'de> Deserialize<'de> for Digest {
     fn deserialize<D: serde::Deserializer<'de>>(deserializer: D) -> Result<Self, D::Error> {
-        let text = String::deserialize(deserializer)?;
-        let mut bytes = [0; 32];
-        let right = text.len() == 64
-            && bytes.iter_mut().enumerate().all(|(i, byte)| {
-                text.get(2 * i..2 * i + 2)
-                    .and_then(|pair| u8::from_str_radix(pair, 16).ok())
-                    .map(|value| *byte = value)
-                    .is_some()
-            });
-        if right {
-            Ok(Digest(bytes))
-        } else {
-            Err(serde::de::Error::custom("expected 64 hexadecimal digits"))
+        /// Reads the digits where they stand: a register holds thousands of digests.
+        struct Hexadecimal;
+        impl serde::de::Visitor<'_> for Hexadecimal {
+            type Value = Digest;
+
+            fn expecting(&self, f: &mut fmt::Formatter) -> fmt::Result {
+                f.write_str("64 hexadecimal digits")
+            }
+
+            fn visit_str<E: serde::de::Error>(self, text: &str) -> Result<Digest, E> {
+                Digest::parse(text).ok_or_else(|| E::invalid_value(serde::de::Unexpected::Str(text), &self))
+            }
         }
+        deserializer.deserialize_str(Hexadecimal)
     }
 }
 

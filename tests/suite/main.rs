@@ -2,12 +2,15 @@
 
 mod caution;
 mod circuit;
+mod cli;
 mod demo;
 mod figure;
 mod fit;
 mod formula;
 mod house;
+mod notebook;
 mod quantity;
+mod redline;
 mod report;
 mod solve;
 mod spread;
