@@ -256,6 +256,7 @@ fn other_formulas_and_cautions_are_new_wording() {
         let symbol =
             |text: &str| Math::Symbol { base: text.into(), subscript: String::new(), owner: String::new() };
         Step {
+            text: String::new(),
             label: "current".into(),
             block: 0,
             condition: "on".into(),

@@ -169,7 +169,7 @@ fn mistakes_are_told_with_file_line_column_and_nearest_spelling() {
         ("```circuit", "```circiut", "circiut"),
         ("10 V ± 5 %", "10 Volt ± 5 %", "Volt"),
         ("to: b, source", "to: bb, source", "bb"),
-        ("10 kΩ ± 1 %", "10 kV ± 1 %", "R2"),
+        ("10 kΩ ± 1 %", "10 kV ± 1 %", "sheet.md:26:16: `10 kV ± 1 %`: the unit does not fit"),
         ("on: {normal: yes}", "on: {normal: yes, V_ix: 3 V}", "V_ix"),
         ("note: T-1", "note: T-1\nnotte: 2", "notte"),
     ] {
