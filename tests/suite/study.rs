@@ -204,3 +204,21 @@ fn a_derating_circuit_has_its_extreme_inside_the_gain_range() {
         cool.flags
     );
 }
+
+#[test]
+fn a_rating_met_on_assumptions_is_told_as_such_and_not_as_not_shown() {
+    let sheet = with("[supply sheet revision 1 page 1]", "[assumed, like the old one]");
+    let found = run(&sheet, PART).unwrap();
+    let assumed = found.stress.iter().filter(|line| line.verdict == "met-on-assumptions").count();
+    assert!(assumed > 0);
+    let issue = qsheaf::report::Issue {
+        number: 1,
+        date: found.note.date.clone(),
+        status: qsheaf::report::Status::Issued,
+        program: String::new(),
+    };
+    let sources = qsheaf::report::source(&found, &issue, None, &Bundle::default()).unwrap();
+    let page: serde_json::Value = serde_json::from_slice(&sources.files["page.json"]).unwrap();
+    assert_eq!(page["counts"]["stress"]["assumed"], assumed);
+    assert_eq!(page["counts"]["stress"]["not_shown"], 0);
+}

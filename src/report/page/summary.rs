@@ -34,6 +34,7 @@ pub(crate) fn counts(findings: &Findings) -> (Counts, Counts) {
     for line in &findings.stress {
         match line.verdict.as_str() {
             "met" => stress.met += 1,
+            "met-on-assumptions" => stress.assumed += 1,
             "not-met" => stress.not_met += 1,
             _ => stress.not_shown += 1,
         }
@@ -169,7 +170,8 @@ fn margin(finding: &CriterionFinding) -> Option<Number> {
 
 /// Stress lines for the first page: those that are not met or not shown.
 pub(super) fn stresses(findings: &Findings) -> Vec<Value> {
-    let mut failing: Vec<_> = findings.stress.iter().filter(|line| line.verdict != "met").collect();
+    let mut failing: Vec<_> =
+        findings.stress.iter().filter(|line| !line.verdict.starts_with("met")).collect();
     failing.sort_by_key(|line| u8::from(line.verdict != "not-met"));
     let columns = stress_lines(&failing);
     failing

@@ -284,7 +284,8 @@ pub(super) fn stress(findings: &Findings) -> Value {
     let mut all: Vec<&StressLine> = findings.stress.iter().collect();
     let rank = |line: &StressLine| match line.verdict.as_str() {
         "not-met" => 0,
-        "met" => 2,
+        "met-on-assumptions" => 2,
+        "met" => 3,
         _ => 1,
     };
     all.sort_by_key(|line| rank(line));
@@ -293,6 +294,7 @@ pub(super) fn stress(findings: &Findings) -> Value {
         let (key, words) = match rank(line) {
             0 => ("not-met", "NOT MET"),
             1 => ("not-shown", "NOT SHOWN"),
+            2 => ("assumed", "MET on assumptions"),
             _ => ("met", "MET"),
         };
         json!({
