@@ -2,10 +2,12 @@
 
 mod circuit;
 mod demo;
+mod device;
 mod figure;
 mod fit;
 mod formula;
 mod house;
+mod numeric;
 mod quantity;
 mod report;
 mod solve;
