@@ -23,3 +23,5 @@ pub mod study;
 pub mod redline;
 pub mod figure;
 pub mod report;
+pub mod notebook;
+pub mod cli;

@@ -125,7 +125,9 @@ impl<'a> Graph<'a> {
                 };
                 let passes = match element.kind {
                     ElementKind::Diode => (element.terminals.first() == Some(&at)) == downstream,
-                    ElementKind::Zener | ElementKind::Coil | ElementKind::Inductor => true,
+                    ElementKind::Zener | ElementKind::Coil | ElementKind::Inductor | ElementKind::Supply => {
+                        true
+                    }
                     ElementKind::Resistor | ElementKind::Filament => {
                         element.resistance.is_some_and(|resistance| resistance <= most)
                     }

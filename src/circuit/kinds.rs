@@ -2,6 +2,7 @@
 
 use crate::part::PartKind;
 use crate::quantity::Dimension;
+use crate::worksheet::{Record, Spot};
 
 use super::ElementKind;
 
@@ -179,6 +180,15 @@ impl KindRule {
 /// The rule of a kind.
 pub(super) fn rule(kind: ElementKind) -> Option<&'static KindRule> {
     KINDS.iter().find(|rule| rule.kind == kind)
+}
+
+/// The part record that an element names: with its kind where it is a device, in `part` otherwise.
+pub fn part_named(record: &Record) -> Option<&Spot<String>> {
+    let names_part = |key: &str| {
+        key == "part"
+            || KINDS.iter().any(|rule| rule.key == key && rule.value.is_none() && rule.part.is_some())
+    };
+    record.fields.iter().find(|(key, _)| names_part(&key.value)).map(|(_, value)| value)
 }
 
 /// The kind of a part in words.

@@ -7,6 +7,7 @@ mod symbols;
 mod values;
 
 pub use build::{Built, build};
+pub use kinds::part_named;
 pub use symbols::{Symbol, symbols};
 pub use values::InPlace;
 

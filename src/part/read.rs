@@ -46,9 +46,7 @@ pub fn read(file: &File) -> Result<Vec<Part>, Diagnostics> {
             Diagnostic::error(&origin, format!("byte {at} is no text")).expected("YAML in UTF-8"),
         )
     })?;
-    // A record cut out of its file names the file it came from.
-    let path = file.path.split('#').next().unwrap_or(&file.path).into();
-    let root = yaml::read(text, &path, 1)?;
+    let root = yaml::read(text, &file.path, 1)?;
     let mut errors = Diagnostics::default();
     let mut parts = Vec::new();
     for (key, node) in root.map("part records: `NAME:` and below it `kind:`, `rows:`, `ratings:`")? {

@@ -199,14 +199,18 @@ fn criterion(finding: &CriterionFinding) -> Judgement {
     }
 }
 
-fn stress(line: &StressLine) -> Judgement {
+/// The verdict of a stress line.
+pub fn stress_verdict(line: &StressLine) -> Verdict {
     let reason = line.reason.clone().unwrap_or_default();
-    let verdict = match line.verdict.as_str() {
+    match line.verdict.as_str() {
         "met" => Verdict::Met,
         "met-on-assumptions" => Verdict::MetOnAssumptions { count: reason.split("; ").count() },
         "not-met" => Verdict::NotMet,
         _ => Verdict::NotShown { reason },
-    };
+    }
+}
+
+fn stress(line: &StressLine) -> Judgement {
     let margin = match (&line.worst, line.limit) {
         (Shown::Value(worst), Some(limit)) => Shown::Value(limit - worst),
         (Shown::NotShown(reason), _) => Shown::NotShown(reason.clone()),
@@ -216,7 +220,7 @@ fn stress(line: &StressLine) -> Judgement {
         label: format!("{} {} in {}", line.designator, line.quantity.symbol(), line.condition),
         kind: line.kind,
         unit: line.unit.clone(),
-        verdict,
+        verdict: stress_verdict(line),
         size: size(&[&line.worst, &margin]).max(line.limit.map_or(0.0, f64::abs)),
         margin,
     }

@@ -1,7 +1,7 @@
 //! What a note starts from, as a flat list of named texts: basis values, conditions, elements, rows of parts, criteria.
 
 use crate::part::{Part, RatingQuantity, Row};
-use crate::quantity::{self, Dimension, Kind, Source, Unit};
+use crate::quantity::{self, Dimension, Kind, Unit};
 use crate::study::{Findings, Input};
 
 /// Significant digits of a printed row; data sheets print fewer.
@@ -95,8 +95,16 @@ fn input(input: &Input) -> Fact {
 }
 
 fn part(part: &Part, out: &mut Vec<Fact>) {
-    let name = &part.name;
-    out.push(Fact::new(format!("{name} description"), &part.description));
+    out.push(Fact::new(format!("{} description", part.name), &part.description));
+    for (name, text, source) in part_lines(part) {
+        let exact = format!("{text} [{source}]");
+        out.push(Fact { name: format!("{} {name}", part.name), readings: vec![text, exact] });
+    }
+}
+
+/// Every row, rating and pulse of a record: name with its test condition, value as text, source.
+pub fn part_lines(part: &Part) -> Vec<(String, String, &str)> {
+    let mut out = Vec::new();
     for row in &part.rows {
         let kind = Kind::of(row.quantity.dimension());
         let all: Vec<f64> = [row.min, row.typ, row.max].into_iter().flatten().collect();
@@ -108,26 +116,20 @@ fn part(part: &Part, out: &mut Vec<Fact>) {
             .collect();
         let at = bias(row);
         let at = if at.is_empty() { at } else { format!(" at {at}") };
-        out.push(sourced(format!("{name} {}{at}", row.quantity.symbol()), text.join(", "), &row.source));
+        let name = format!("{}{at}", row.quantity.symbol());
+        out.push((name, text.join(", "), row.source.text.as_str()));
     }
     for rating in &part.ratings {
-        let up_to = rating
-            .up_to
-            .map(|up_to| format!(" up to {}", plain(up_to, &Unit::celsius())))
-            .unwrap_or_default();
-        let text = format!("{}{up_to}", rating_text(rating.quantity, rating.value));
-        out.push(sourced(format!("{name} rating {}", rating.quantity.symbol()), text, &rating.source));
+        let up_to = rating.up_to.map(|up_to| format!(" up to {}", plain(up_to, &Unit::celsius())));
+        let text = format!("{}{}", rating_text(rating.quantity, rating.value), up_to.unwrap_or_default());
+        out.push((format!("rating {}", rating.quantity.symbol()), text, &rating.source.text));
     }
     for pulse in &part.pulses {
         let lasts = in_best_unit(pulse.lasts, Kind::of(Dimension::SECOND));
         let text = in_best_unit(pulse.impedance, Kind::of(Dimension::KELVIN_PER_WATT));
-        out.push(sourced(format!("{name} Z_th(j-a) at {lasts}"), text, &pulse.source));
+        out.push((format!("Z_th(j-a) at {lasts}"), text, &pulse.source.text));
     }
-}
-
-fn sourced(name: String, text: String, source: &Source) -> Fact {
-    let exact = format!("{text} [{}]", source.text);
-    Fact { name, readings: vec![text, exact] }
+    out
 }
 
 /// A rating in its usual unit.

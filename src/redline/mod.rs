@@ -4,7 +4,8 @@ mod compare;
 mod facts;
 mod recall;
 
-pub use compare::compare;
+pub use compare::{compare, stress_verdict};
+pub use facts::part_lines;
 pub use recall::{Unreadable, recall};
 
 use serde::{Deserialize, Serialize};

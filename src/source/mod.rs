@@ -108,6 +108,8 @@ pub enum ReadError {
     TooLarge(u64, u64),
     /// The path leaves the notebook.
     Outside,
+    /// A folder or a device stands there.
+    NoFile,
     Io(std::io::Error),
 }
 
@@ -118,21 +120,30 @@ impl fmt::Display for ReadError {
                 write!(f, "the file has {size} bytes; at most {limit} are read")
             }
             ReadError::Outside => write!(f, "the path leads out of the notebook"),
+            ReadError::NoFile => write!(f, "this is no plain file"),
             ReadError::Io(error) => write!(f, "{error}"),
         }
     }
 }
 
-/// Reads `path` (relative to `root`, with `/`) if it lies inside `root`, links resolved, and is no larger than `limit`.
+/// Reads `path` (relative to `root`, with `/`) if it lies inside `root`, links resolved, is a plain file and is no larger
+/// than `limit`.
 pub fn read(root: &Path, path: &str, limit: u64) -> Result<File, ReadError> {
-    let root = root.canonicalize().map_err(ReadError::Io)?;
+    read_below(&root.canonicalize().map_err(ReadError::Io)?, path, limit)
+}
+
+/// [`read`] below a `root` that is canonical already: for many files of one folder.
+pub fn read_below(root: &Path, path: &str, limit: u64) -> Result<File, ReadError> {
     let full = root.join(path).canonicalize().map_err(ReadError::Io)?;
-    if !full.starts_with(&root) {
+    if !full.starts_with(root) {
         return Err(ReadError::Outside);
     }
-    let size = std::fs::metadata(&full).map_err(ReadError::Io)?.len();
-    if size > limit {
-        return Err(ReadError::TooLarge(size, limit));
+    let about = std::fs::metadata(&full).map_err(ReadError::Io)?;
+    if !about.is_file() {
+        return Err(ReadError::NoFile);
+    }
+    if about.len() > limit {
+        return Err(ReadError::TooLarge(about.len(), limit));
     }
     Ok(File::new(path, std::fs::read(&full).map_err(ReadError::Io)?))
 }

@@ -37,6 +37,12 @@ impl<'a> Evaluator<'a> {
         }
         let mut outputs = vec![Err(Miss::NotConverged); self.response.outputs()];
         let code = self.response.eval(at, &mut outputs);
+        // A number that is none would make every comparison below false.
+        for output in &mut outputs {
+            if matches!(output, Ok(value) if !value.is_finite()) {
+                *output = Err(Miss::NotFinite);
+            }
+        }
         if !self.regions.iter().any(|region| region.code == code) {
             self.regions.push(RegionAt { code, at: at.to_vec() });
         }
@@ -45,10 +51,15 @@ impl<'a> Evaluator<'a> {
         self.seen.len() - 1
     }
 
+    /// Value of one output at a point seen.
+    pub fn of(&self, index: usize, output: usize) -> Option<f64> {
+        self.seen[index].outputs[output].ok()
+    }
+
     /// Value of one output at a point.
     pub fn value(&mut self, at: &[f64], output: usize) -> Option<f64> {
         let index = self.point(at);
-        self.seen[index].outputs[output].ok()
+        self.of(index, output)
     }
 
     /// Index of the point that differs from `at` in one axis.
@@ -60,5 +71,14 @@ impl<'a> Evaluator<'a> {
 
     pub fn nominal(&self) -> Vec<f64> {
         self.axes.iter().map(|axis| axis.nominal).collect()
+    }
+
+    /// Low and high end of an axis.
+    pub fn ends(&self, axis: usize) -> [f64; 2] {
+        [self.axes[axis].low, self.axes[axis].high]
+    }
+
+    pub fn width(&self, axis: usize) -> f64 {
+        self.axes[axis].high - self.axes[axis].low
     }
 }

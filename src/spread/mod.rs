@@ -4,16 +4,20 @@
 //! [`extremes`] finds both for all outputs of a response at once and says how each was established:
 //!
 //! * [`Method::Exact`]: nothing varies.
-//! * [`Method::Monotone`]: along every axis that matters, through nominal and through the extreme itself, the result rises or
-//!   falls throughout; so the extreme lies at a vertex, and that vertex was evaluated.
+//! * [`Method::Monotone`]: along every axis that moves it, through nominal, through the extreme itself, from the opposite
+//!   corner and from scattered vertices, the result rises throughout or falls throughout; so the extreme lies at the vertex
+//!   to which all of that points, and that vertex was evaluated.
 //! * [`Method::Vertices`]: every vertex was evaluated, each axis was scanned inside from the best one, and no point inside
 //!   was better.
-//! * [`Method::Searched`]: starts from the signs of all sensitivities and from the best points seen for any output; each axis
-//!   and each pair of axes that matter flipped, each axis scanned inside and refined, until nothing moves. This finds what
-//!   single and paired changes can find; it is no proof.
+//! * [`Method::Searched`]: starts from the signs of all sensitivities and from the best points seen for any output; axes and
+//!   pairs of axes flipped, each axis scanned inside and refined, ridges followed, other hills climbed, until nothing moves.
+//!   This is no proof.
 
+mod climb;
 mod evaluate;
+mod line;
 mod search;
+mod starts;
 
 use serde::{Deserialize, Serialize};
 

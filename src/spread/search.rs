@@ -1,164 +1,341 @@
-//! The search for extremes.
-
-use std::collections::BTreeMap;
+//! The search for extremes: where it starts, and what may be said of what it found.
 
 use super::evaluate::Evaluator;
 use super::{Extreme, Method, Miss, Options, Range, Response};
 
 /// Up to so many axes every vertex is evaluated (2^7 points).
-const ALL_VERTICES: usize = 7;
-/// Where an axis is scanned inside, as shares of its width; odd shares keep clear of symmetric coincidences.
-const INSIDE: [f64; 5] = [0.13, 0.31, 0.5, 0.69, 0.87];
-/// Rounds of flipping, scanning and refining before a search gives up improving.
-const ROUNDS: usize = 16;
+pub(super) const ALL_VERTICES: usize = 7;
 /// Improvements below this share of the output's size are numerical noise.
 const NOISE: f64 = 1e-9;
 /// An axis matters if it moves the output by more than this share of the output's whole range.
 const MATTERS: f64 = 1e-4;
-/// An interior extreme is refined to this share of its axis.
-const REFINED: f64 = 1e-9;
+/// Changes below this share of the output's whole range are no rise and no fall.
+const FLAT: f64 = 1e-6;
+/// An output that varies by less than this share of its size is not searched for other hills.
+const WORTHWHILE: f64 = 1e-2;
+/// Points that the search for one end may add before it rests with what it has.
+const BUDGET: usize = 600;
+/// How often a search starts again from a corner that what it has seen points to.
+const RESTARTS: usize = 4;
+
+/// One end of one output.
+pub(super) struct Goal {
+    pub output: usize,
+    pub highest: bool,
+    /// Improvements up to this are none.
+    pub noise: f64,
+    /// Difference between the highest and the lowest value seen when the search began.
+    pub range: f64,
+    /// Number of points seen at which the search for this end goes on to no further hill, ridge or pair.
+    pub until: usize,
+}
+
+/// A point that may be the extreme.
+#[derive(Clone, Copy)]
+pub(super) struct Candidate {
+    pub index: usize,
+    pub value: f64,
+}
+
+impl Goal {
+    /// A value such that greater is better; worst where there is none.
+    pub fn gain(&self, value: Option<f64>) -> f64 {
+        value.map_or(f64::NEG_INFINITY, |value| if self.highest { value } else { -value })
+    }
+
+    /// Whether a candidate is better than another by more than noise.
+    pub fn improves(&self, candidate: Candidate, than: Candidate) -> bool {
+        self.gain(Some(candidate.value)) > self.gain(Some(than.value)) + self.noise
+    }
+
+    /// The other candidate if it is better by more than noise, else the first.
+    pub fn better_of(&self, first: Candidate, other: Option<Candidate>) -> Candidate {
+        other.filter(|&other| self.improves(other, first)).unwrap_or(first)
+    }
+}
+
+/// How an output was seen to change along an axis.
+#[derive(Clone, Copy, Default)]
+struct Course {
+    rises: bool,
+    falls: bool,
+    /// Its largest change in one step.
+    most: f64,
+}
+
+impl Course {
+    fn goes_both_ways(self) -> bool {
+        self.rises && self.falls
+    }
+}
+
+pub(super) struct Search<'a> {
+    pub points: Evaluator<'a>,
+    /// Axes that vary at all.
+    pub varying: Vec<usize>,
+    /// Indices of all vertices, where they were all evaluated: bit i of the position is the end of the i-th varying axis.
+    pub vertices: Vec<usize>,
+    /// Indices of vertices from which each axis was flipped for all outputs.
+    pub crossed: Vec<usize>,
+    /// For each output and axis.
+    courses: Vec<Vec<Course>>,
+}
 
 /// Lowest and highest value of every output of a response over its whole space.
 pub fn extremes(response: &dyn Response, options: &Options) -> Vec<Range> {
-    let mut search =
-        Search { points: Evaluator::new(response), varying: Vec::new(), shapes: BTreeMap::new() };
-    search.varying = (0..search.points.axes.len())
-        .filter(|&i| search.points.axes[i].low < search.points.axes[i].high)
-        .collect();
+    let outputs = response.outputs();
+    let points = Evaluator::new(response);
+    let axes = points.axes;
+    let mut search = Search {
+        varying: (0..axes.len()).filter(|&axis| axes[axis].low < axes[axis].high).collect(),
+        vertices: Vec::new(),
+        crossed: Vec::new(),
+        courses: vec![vec![Course::default(); axes.len()]; outputs],
+        points,
+    };
     let nominal = search.points.nominal();
     let start = search.points.point(&nominal);
-    search.cross(&nominal);
-    if search.varying.len() <= ALL_VERTICES {
-        search.vertices(&nominal);
-    }
-    let outputs = response.outputs();
-    let wanted = |output: usize| options.wanted.get(output).copied().unwrap_or((true, true));
+    search.seed(&nominal);
+    let ends: Vec<(usize, bool)> = (0..outputs)
+        .flat_map(|output| {
+            let (min, max) = options.wanted.get(output).copied().unwrap_or((true, true));
+            [min.then_some((output, false)), max.then_some((output, true))]
+        })
+        .flatten()
+        .collect();
     // First every output takes its own corner, so that each search below starts from the best point that any output saw.
-    for output in 0..outputs {
-        for highest in [false, true] {
-            let (min, max) = wanted(output);
-            if if highest { max } else { min } {
-                search.corner_by_signs(&nominal, output, highest);
-            }
-        }
+    for &(output, highest) in &ends {
+        search.nominal_corner(&nominal, output, highest);
     }
-    let mut ranges = Vec::with_capacity(outputs);
-    for output in 0..outputs {
-        let (min, max) = wanted(output);
-        let mut found = Found::default();
-        let min = min.then(|| search.end(output, false, &mut found)).flatten();
-        let max = max.then(|| search.end(output, true, &mut found)).flatten();
-        ranges.push((min, max, found));
+    let searched: Vec<Option<(Goal, Candidate)>> =
+        ends.iter().map(|&(output, highest)| search.end(output, highest)).collect();
+    // What one end shows of an output tells how the other was established; so this comes last.
+    let mut found: Vec<[Option<Extreme>; 2]> = vec![[None, None]; outputs];
+    for (goal, candidate) in searched.into_iter().flatten() {
+        found[goal.output][usize::from(goal.highest)] = Some(search.describe(&goal, candidate));
     }
-    // Only now is it known where an output has no value, and which regions were met.
-    let missing = search.missing(outputs);
-    let nominals = &search.points.seen[start].outputs;
-    ranges
+    found
         .into_iter()
-        .zip(missing)
         .enumerate()
-        .map(|(output, ((min, max, found), missing))| Range {
-            nominal: nominals[output],
-            min,
-            max,
-            interior: found.interior,
-            non_monotone: found.non_monotone,
-            missing,
-            regions: search.points.regions.clone(),
+        .map(|(output, [min, max])| {
+            let interior = search.interior([&min, &max]);
+            Range {
+                nominal: search.points.seen[start].outputs[output],
+                min,
+                max,
+                interior,
+                non_monotone: search.non_monotone(output),
+                // Only now is it known where an output has no value, and which regions were met.
+                missing: search.missing(output),
+                regions: search.points.regions.clone(),
+            }
         })
         .collect()
 }
 
-/// What a search notices on its way.
-#[derive(Default)]
-struct Found {
-    interior: Vec<usize>,
-    non_monotone: Vec<usize>,
-}
-
-fn add(list: &mut Vec<usize>, axis: usize) {
-    if !list.contains(&axis) {
-        list.push(axis);
-        list.sort_unstable();
-    }
-}
-
-struct Search<'a> {
-    points: Evaluator<'a>,
-    /// Axes that vary at all.
-    varying: Vec<usize>,
-    /// For each output: the axes that move it, seen on the cross through nominal and at corners.
-    shapes: BTreeMap<usize, Vec<usize>>,
-}
-
 impl Search<'_> {
-    /// Each axis scanned from its low to its high end through `centre`.
-    fn cross(&mut self, centre: &[f64]) {
-        for axis in self.varying.clone() {
-            for to in self.line(axis) {
-                self.points.moved(centre, axis, to);
+    /// One end of an output; `None` where it has no value anywhere.
+    fn end(&mut self, output: usize, highest: bool) -> Option<(Goal, Candidate)> {
+        let best = self.best(output, highest)?;
+        let (magnitude, range) = self.size(output);
+        let noise = (NOISE * magnitude).max(f64::MIN_POSITIVE);
+        let until = self.points.seen.len() + BUDGET;
+        let goal = Goal { output, highest, noise, range, until };
+        let nominal = self.points.nominal();
+        if range <= 10.0 * noise {
+            let index = self.points.point(&nominal);
+            let flat = self.points.of(index, output).map(|value| Candidate { index, value });
+            return Some((goal, flat.unwrap_or(best)));
+        }
+        self.note_seeds(&goal);
+        let corner = self.nominal_corner(&nominal, output, highest);
+        let corner = self.points.of(corner, output).map(|value| Candidate { index: corner, value });
+        let mut candidate = self.climb(&goal, corner.unwrap_or(best));
+        if goal.improves(best, candidate) {
+            candidate = self.climb(&goal, best);
+        }
+        self.note_opposite(&goal, candidate);
+        for _ in 0..RESTARTS {
+            let before = candidate;
+            if self.conflicts(&goal) && range > WORTHWHILE * magnitude && !self.is_spent(&goal) {
+                // Again, since pairs are flipped only where the output is known to go both ways.
+                candidate = self.climb(&goal, candidate);
+                candidate = self.other_hills(&goal, candidate);
+            }
+            let pointed = self.corner_of_courses(&goal, candidate);
+            let seen = self.best(output, highest);
+            for start in [pointed, seen].into_iter().flatten() {
+                if goal.improves(start, candidate) {
+                    candidate = self.climb(&goal, start);
+                }
+            }
+            if !goal.improves(candidate, before) {
+                break;
+            }
+        }
+        Some((goal, candidate))
+    }
+
+    /// The extreme with its method and the axes that matter there.
+    fn describe(&mut self, goal: &Goal, candidate: Candidate) -> Extreme {
+        let at = self.points.seen[candidate.index].at.clone();
+        if goal.range <= 10.0 * goal.noise {
+            return Extreme { value: candidate.value, at, method: Method::Exact, matters: Vec::new() };
+        }
+        let whole = self.courses_are_whole(goal, &at);
+        let matters = self.matters(goal, candidate);
+        let at_ends = |axis: &usize| self.points.ends(*axis).contains(&at[*axis]);
+        let vertex = matters.iter().all(at_ends);
+        let pointed = self.corner_of_courses(goal, candidate);
+        let is_pointed_to =
+            pointed.is_some_and(|corner| (corner.value - candidate.value).abs() <= goal.noise);
+        let method = if vertex && whole && is_pointed_to && !self.conflicts(goal) {
+            Method::Monotone
+        } else if vertex && self.varying.len() <= ALL_VERTICES {
+            Method::Vertices
+        } else {
+            Method::Searched
+        };
+        Extreme { value: candidate.value, at, method, matters }
+    }
+
+    /// Whether the search for an end has added as many points as it may.
+    pub fn is_spent(&self, goal: &Goal) -> bool {
+        self.points.seen.len() >= goal.until
+    }
+
+    /// Notes a change of an output towards the high end of an axis.
+    pub fn note(&mut self, goal: &Goal, axis: usize, change: f64) {
+        if change.abs() > 10.0 * goal.noise + FLAT * goal.range {
+            let course = &mut self.courses[goal.output][axis];
+            course.rises |= change > 0.0;
+            course.falls |= change < 0.0;
+            course.most = course.most.max(change.abs());
+        }
+    }
+
+    /// Notes the changes along each axis through nominal and along the edges between all vertices.
+    fn note_seeds(&mut self, goal: &Goal) {
+        let nominal = self.points.nominal();
+        for (bit, axis) in self.varying.clone().into_iter().enumerate() {
+            self.line_is_whole(goal, &nominal, axis);
+            for index in self.crossed.clone() {
+                let at = self.points.seen[index].at.clone();
+                self.note_edge(goal, &at, axis);
+            }
+            for code in (0..self.vertices.len()).filter(|code| code >> bit & 1 == 0) {
+                let ends = [self.vertices[code], self.vertices[code | 1 << bit]];
+                if let [Some(low), Some(high)] = ends.map(|index| self.points.of(index, goal.output)) {
+                    self.note(goal, axis, high - low);
+                }
             }
         }
     }
 
-    /// Where an axis is evaluated: ends, nominal, inside.
-    fn line(&self, axis: usize) -> Vec<f64> {
-        let record = &self.points.axes[axis];
-        let mut line = vec![record.low];
-        line.extend(INSIDE.iter().map(|share| record.low + share * (record.high - record.low)));
-        line.push(record.high);
-        if record.nominal > record.low && record.nominal < record.high {
-            line.push(record.nominal);
-        }
-        line.sort_by(f64::total_cmp);
-        line.dedup();
-        line
-    }
-
-    fn vertices(&mut self, nominal: &[f64]) {
-        let varying = self.varying.clone();
-        for code in 0..1_u32 << varying.len() {
-            let mut at = nominal.to_vec();
-            for (bit, &axis) in varying.iter().enumerate() {
-                let record = &self.points.axes[axis];
-                at[axis] = if code >> bit & 1 == 1 { record.high } else { record.low };
+    /// Notes the changes along one axis through a point; false where the output has no value on the way.
+    fn line_is_whole(&mut self, goal: &Goal, at: &[f64], axis: usize) -> bool {
+        // Nominal lines were evaluated in full for all outputs at once.
+        let brief = !self.goes_both_ways(goal, axis) && at != self.points.nominal();
+        let mut last = None;
+        let mut whole = true;
+        for to in self.stops(axis, brief) {
+            let index = self.points.moved(at, axis, to);
+            let value = self.points.of(index, goal.output);
+            whole &= value.is_some();
+            if let (Some(last), Some(value)) = (last, value) {
+                self.note(goal, axis, value - last);
             }
-            self.points.point(&at);
+            last = value.or(last);
+        }
+        whole
+    }
+
+    /// Notes the changes along each axis that moves the output, through nominal and through a point.
+    fn courses_are_whole(&mut self, goal: &Goal, at: &[f64]) -> bool {
+        let nominal = self.points.nominal();
+        let mut whole = true;
+        for axis in self.varying.clone() {
+            if self.moved_anywhere(goal, axis) {
+                whole &= self.line_is_whole(goal, &nominal, axis);
+                whole &= self.line_is_whole(goal, at, axis);
+            }
+        }
+        whole
+    }
+
+    /// Whether an axis was seen to move an output by what matters.
+    pub fn moved_anywhere(&self, goal: &Goal, axis: usize) -> bool {
+        self.courses[goal.output][axis].most > MATTERS * goal.range
+    }
+
+    /// Whether an output was seen to rise and to fall along an axis.
+    pub fn goes_both_ways(&self, goal: &Goal, axis: usize) -> bool {
+        self.courses[goal.output][axis].goes_both_ways()
+    }
+
+    /// Whether an output both rises and falls along any axis.
+    pub fn conflicts(&self, goal: &Goal) -> bool {
+        self.courses[goal.output].iter().any(|course| course.goes_both_ways())
+    }
+
+    /// Whether an axis is worth scanning at a candidate: it moves the output there or does so through nominal.
+    pub fn moves(&mut self, goal: &Goal, candidate: Candidate, axis: usize) -> bool {
+        if self.moved_anywhere(goal, axis) {
+            return true;
+        }
+        let at = self.points.seen[candidate.index].at.clone();
+        self.points.ends(axis).into_iter().any(|end| {
+            let index = self.points.moved(&at, axis, end);
+            let there = self.points.of(index, goal.output);
+            there.is_none_or(|there| (there - candidate.value).abs() > goal.noise + MATTERS * goal.range)
+        })
+    }
+
+    /// The vertex to which everything seen of an output points, the axes along which it goes both ways as in the candidate.
+    fn corner_of_courses(&mut self, goal: &Goal, candidate: Candidate) -> Option<Candidate> {
+        let mut corner = self.points.seen[candidate.index].at.clone();
+        for axis in self.varying.clone() {
+            let course = self.courses[goal.output][axis];
+            if course.rises != course.falls {
+                corner[axis] = self.points.ends(axis)[usize::from(course.rises == goal.highest)];
+            }
+        }
+        let index = self.points.point(&corner);
+        self.points.of(index, goal.output).map(|value| Candidate { index, value })
+    }
+
+    /// Notes the changes along each axis at the corner opposite to a candidate, where signs differ if they do anywhere.
+    fn note_opposite(&mut self, goal: &Goal, candidate: Candidate) {
+        let mut corner = self.points.seen[candidate.index].at.clone();
+        let axes: Vec<usize> =
+            self.varying.iter().copied().filter(|&axis| self.moved_anywhere(goal, axis)).collect();
+        for &axis in &axes {
+            let [low, high] = self.points.ends(axis);
+            corner[axis] = if corner[axis] < (low + high) / 2.0 { high } else { low };
+        }
+        for axis in axes {
+            self.note_edge(goal, &corner, axis);
         }
     }
 
-    /// Evaluates the vertex to which the change along each axis through `centre` points.
-    fn corner_by_signs(&mut self, centre: &[f64], output: usize, highest: bool) -> Option<Vec<f64>> {
-        let mut corner = centre.to_vec();
-        for axis in self.varying.clone() {
-            let record = &self.points.axes[axis];
-            let (low, high) = (record.low, record.high);
-            let low_at = self.points.moved(centre, axis, low);
-            let high_at = self.points.moved(centre, axis, high);
-            let (at_low, at_high) = (
-                self.points.seen[low_at].outputs[output].ok()?,
-                self.points.seen[high_at].outputs[output].ok()?,
-            );
-            corner[axis] = if at_low == at_high {
-                centre[axis]
-            } else if (at_high > at_low) == highest {
-                high
-            } else {
-                low
-            };
+    /// Notes the change from end to end of one axis through a point.
+    fn note_edge(&mut self, goal: &Goal, at: &[f64], axis: usize) {
+        let values = self.points.ends(axis).map(|end| {
+            let index = self.points.moved(at, axis, end);
+            self.points.of(index, goal.output)
+        });
+        if let [Some(low), Some(high)] = values {
+            self.note(goal, axis, high - low);
         }
-        self.points.point(&corner);
-        Some(corner)
     }
 
     /// The best point seen so far for an output.
-    fn best(&self, output: usize, highest: bool) -> Option<(usize, f64)> {
-        let mut best: Option<(usize, f64)> = None;
+    fn best(&self, output: usize, highest: bool) -> Option<Candidate> {
+        let mut best: Option<Candidate> = None;
         for (index, seen) in self.points.seen.iter().enumerate() {
-            if let Ok(value) = seen.outputs[output]
-                && best.is_none_or(|(_, best)| better(value, best, highest, 0.0))
-            {
-                best = Some((index, value));
+            let Ok(value) = seen.outputs[output] else { continue };
+            if best.is_none_or(|best| if highest { value > best.value } else { value < best.value }) {
+                best = Some(Candidate { index, value });
             }
         }
         best
@@ -172,272 +349,48 @@ impl Search<'_> {
         (low.abs().max(high.abs()), high - low)
     }
 
-    /// One end of an output: from the best point seen, and from the corner that the signs there point to, until nothing moves.
-    fn end(&mut self, output: usize, highest: bool, found: &mut Found) -> Option<Extreme> {
-        let (mut index, mut value) = self.best(output, highest)?;
-        let (magnitude, range) = self.size(output);
-        let noise = (NOISE * magnitude).max(f64::MIN_POSITIVE);
-        if range <= noise {
-            let at = self.points.nominal();
-            let value = self.points.value(&at, output)?;
-            return Some(Extreme { value, at, method: Method::Exact, matters: Vec::new() });
-        }
-        for _ in 0..ROUNDS {
-            let before = value;
-            // Signs derived anew at the candidate.
-            let at = self.points.seen[index].at.clone();
-            if let Some(corner) = self.corner_by_signs(&at, output, highest)
-                && let Some(there) = self.points.value(&corner, output)
-                && better(there, value, highest, noise)
-            {
-                (index, value) = (self.points.point(&corner), there);
-            }
-            (index, value) = self.along_axes(output, highest, index, value, noise);
-            if !better(value, before, highest, noise) {
-                (index, value) = self.pairs(output, highest, index, value, noise);
-            }
-            if !better(value, before, highest, noise) {
-                break;
-            }
-        }
-        let at = self.points.seen[index].at.clone();
-        let matters = self.matters(output, &at);
-        let mut vertex = true;
-        for &axis in &matters {
-            // An axis that does not move the output rests at its nominal value; that is no interior extreme.
-            let record = &self.points.axes[axis];
-            if at[axis] > record.low && at[axis] < record.high {
-                vertex = false;
-                add(&mut found.interior, axis);
-            }
-        }
-        let monotone = self.monotone(output, &at, &matters, noise, found);
-        let method = if monotone && vertex {
-            Method::Monotone
-        } else if vertex && self.varying.len() <= ALL_VERTICES {
-            Method::Vertices
-        } else {
-            Method::Searched
-        };
-        Some(Extreme { value, at, method, matters })
-    }
-
-    /// Moves along one axis at a time, inside too, and refines what lies inside.
-    fn along_axes(
-        &mut self,
-        output: usize,
-        highest: bool,
-        mut index: usize,
-        mut value: f64,
-        noise: f64,
-    ) -> (usize, f64) {
-        for axis in self.varying.clone() {
-            let at = self.points.seen[index].at.clone();
-            let line = if self.moves(output, &at, axis, noise) {
-                self.line(axis)
-            } else {
-                continue;
-            };
-            let mut values: Vec<(f64, usize, Option<f64>)> = Vec::with_capacity(line.len());
-            for to in line {
-                let there = self.points.moved(&at, axis, to);
-                values.push((to, there, self.points.seen[there].outputs[output].ok()));
-            }
-            let best = (0..values.len())
-                .filter(|&i| values[i].2.is_some())
-                .max_by(|&a, &b| signed(values[a].2, highest).total_cmp(&signed(values[b].2, highest)));
-            let Some(best) = best else { continue };
-            let Some(there) = values[best].2 else { continue };
-            if better(there, value, highest, noise) {
-                (index, value) = (values[best].1, there);
-            }
-            if best > 0 && best + 1 < values.len() && !better(value, there, highest, noise) {
-                let bracket = (values[best - 1].0, values[best + 1].0);
-                let (refined, there) = self.refine(output, highest, &at, axis, bracket);
-                if there.is_some_and(|there| better(there, value, highest, noise)) {
-                    (index, value) = (refined, there.unwrap_or(value));
-                }
-            }
-        }
-        (index, value)
-    }
-
-    /// Whether flipping an axis at a point moves an output; an axis that does not is neither scanned nor paired.
-    fn moves(&mut self, output: usize, at: &[f64], axis: usize, noise: f64) -> bool {
-        if self.shapes.get(&output).is_some_and(|axes| axes.contains(&axis)) {
-            return true;
-        }
-        let here = self.points.value(at, output);
-        let record = &self.points.axes[axis];
-        let ends = [record.low, record.high];
-        let nominal = self.points.nominal();
-        let (_, range) = self.size(output);
-        let least = noise.max(MATTERS * 1e-2 * range);
-        let mut moved = false;
-        for to in ends {
-            let there = self.points.moved(at, axis, to);
-            let there = self.points.seen[there].outputs[output].ok();
-            moved |= here.zip(there).is_none_or(|(a, b)| (a - b).abs() > least);
-        }
-        if !moved {
-            // Two opposite changes may cancel between the ends; the cross through nominal saw the inside.
-            let line = self.line(axis);
-            let centre = self.points.value(&nominal, output);
-            for to in line {
-                let there = self.points.moved(&nominal, axis, to);
-                let there = self.points.seen[there].outputs[output].ok();
-                moved |= centre.zip(there).is_some_and(|(a, b)| (a - b).abs() > least);
-            }
-        }
-        if moved {
-            let axes = self.shapes.entry(output).or_default();
-            add(axes, axis);
-        }
-        moved
-    }
-
-    /// Golden-section search inside a bracket of one axis (Kiefer 1953).
-    fn refine(
-        &mut self,
-        output: usize,
-        highest: bool,
-        at: &[f64],
-        axis: usize,
-        (mut low, mut high): (f64, f64),
-    ) -> (usize, Option<f64>) {
-        const SHARE: f64 = 0.618_033_988_749_894_9;
-        let width = self.points.axes[axis].high - self.points.axes[axis].low;
-        let probe = |search: &mut Self, to: f64| {
-            let there = search.points.moved(at, axis, to);
-            (there, search.points.seen[there].outputs[output].ok())
-        };
-        let (mut left, mut right) = (high - SHARE * (high - low), low + SHARE * (high - low));
-        let (mut at_left, mut at_right) = (probe(self, left), probe(self, right));
-        while high - low > REFINED.sqrt() * width {
-            if signed(at_left.1, highest) >= signed(at_right.1, highest) {
-                (high, right, at_right) = (right, left, at_left);
-                left = high - SHARE * (high - low);
-                at_left = probe(self, left);
-            } else {
-                (low, left, at_left) = (left, right, at_right);
-                right = low + SHARE * (high - low);
-                at_right = probe(self, right);
-            }
-        }
-        if signed(at_left.1, highest) >= signed(at_right.1, highest) { at_left } else { at_right }
-    }
-
-    /// Flips two axes at once: what single changes cannot reach.
-    fn pairs(&mut self, output: usize, highest: bool, index: usize, value: f64, noise: f64) -> (usize, f64) {
-        if self.varying.len() <= ALL_VERTICES {
-            return (index, value);
-        }
-        let at = self.points.seen[index].at.clone();
-        let axes: Vec<usize> = self
-            .varying
-            .iter()
-            .copied()
-            .filter(|&axis| self.shapes.get(&output).is_some_and(|s| s.contains(&axis)))
-            .collect();
-        let mut best = (index, value);
-        for (i, &one) in axes.iter().enumerate() {
-            for &other in &axes[i + 1..] {
-                let mut point = at.clone();
-                for axis in [one, other] {
-                    let record = &self.points.axes[axis];
-                    let middle = (record.low + record.high) / 2.0;
-                    point[axis] = if at[axis] < middle { record.high } else { record.low };
-                }
-                let there = self.points.point(&point);
-                if let Ok(found) = self.points.seen[there].outputs[output]
-                    && better(found, best.1, highest, noise)
-                {
-                    best = (there, found);
-                }
-            }
-        }
-        best
-    }
-
-    /// The axes whose change from a point moves the output, most first.
-    fn matters(&mut self, output: usize, at: &[f64]) -> Vec<usize> {
-        let Some(here) = self.points.value(at, output) else { return Vec::new() };
+    /// The axes whose change from a candidate moves the output, most first.
+    fn matters(&mut self, goal: &Goal, candidate: Candidate) -> Vec<usize> {
+        let at = self.points.seen[candidate.index].at.clone();
         let mut effects = Vec::new();
         for axis in self.varying.clone() {
-            let record = &self.points.axes[axis];
             let mut effect = 0.0_f64;
-            for to in [record.low, record.high] {
-                let there = self.points.moved(at, axis, to);
+            for to in self.points.ends(axis) {
+                let index = self.points.moved(&at, axis, to);
                 // Where the other end has no value at all, the axis matters most.
-                let change = self.points.seen[there].outputs[output]
-                    .map_or(f64::INFINITY, |there| (there - here).abs());
-                effect = effect.max(change);
+                let there = self.points.of(index, goal.output);
+                effect = effect.max(there.map_or(f64::INFINITY, |there| (there - candidate.value).abs()));
             }
             effects.push((axis, effect));
         }
-        let (_, range) = self.size(output);
-        effects.retain(|(_, effect)| *effect > MATTERS * range);
+        effects.retain(|(_, effect)| *effect > MATTERS * goal.range);
         effects.sort_by(|a, b| b.1.total_cmp(&a.1).then(a.0.cmp(&b.0)));
         effects.into_iter().map(|(axis, _)| axis).collect()
     }
 
-    /// Whether the output rises or falls throughout along each axis that matters, through nominal and through `at`. Notes
-    /// each axis along which it does both.
-    fn monotone(
-        &mut self,
-        output: usize,
-        at: &[f64],
-        matters: &[usize],
-        noise: f64,
-        found: &mut Found,
-    ) -> bool {
-        let nominal = self.points.nominal();
-        let mut all = true;
-        for &axis in matters {
-            let mut direction = 0.0_f64;
-            for base in [&nominal[..], at] {
-                let mut last: Option<f64> = None;
-                for to in self.line(axis) {
-                    let there = self.points.moved(base, axis, to);
-                    let Ok(value) = self.points.seen[there].outputs[output] else {
-                        all = false;
-                        continue;
-                    };
-                    if let Some(last) = last {
-                        let change = value - last;
-                        if change.abs() > noise {
-                            if direction * change < 0.0 {
-                                all = false;
-                                add(&mut found.non_monotone, axis);
-                            }
-                            direction = change.signum();
-                        }
-                    }
-                    last = Some(value);
-                }
-            }
-        }
-        all
+    /// Axes that matter and strictly inside of which an extreme lies. An axis that does not move the output rests anywhere.
+    fn interior(&self, extremes: [&Option<Extreme>; 2]) -> Vec<usize> {
+        let mut inside: Vec<usize> = extremes
+            .into_iter()
+            .flatten()
+            .flat_map(|extreme| extreme.matters.iter().map(|&axis| (axis, extreme.at[axis])))
+            .filter(|&(axis, at)| !self.points.ends(axis).contains(&at))
+            .map(|(axis, _)| axis)
+            .collect();
+        inside.sort_unstable();
+        inside.dedup();
+        inside
     }
 
-    /// For each output the first point at which it has no value.
-    fn missing(&self, outputs: usize) -> Vec<Option<(Miss, Vec<f64>)>> {
-        (0..outputs)
-            .map(|output| {
-                self.points
-                    .seen
-                    .iter()
-                    .find_map(|seen| seen.outputs[output].err().map(|miss| (miss, seen.at.clone())))
-            })
-            .collect()
+    fn non_monotone(&self, output: usize) -> Vec<usize> {
+        let courses = self.courses[output].iter().enumerate();
+        courses.filter(|(_, course)| course.goes_both_ways()).map(|(axis, _)| axis).collect()
     }
-}
 
-fn better(value: f64, than: f64, highest: bool, by: f64) -> bool {
-    if highest { value > than + by } else { value < than - by }
-}
-
-/// A value such that greater is better; worst where there is none.
-fn signed(value: Option<f64>, highest: bool) -> f64 {
-    value.map_or(f64::NEG_INFINITY, |value| if highest { value } else { -value })
+    /// The first point at which an output has no value.
+    fn missing(&self, output: usize) -> Option<(Miss, Vec<f64>)> {
+        let missing =
+            |seen: &super::evaluate::Seen| seen.outputs[output].err().map(|miss| (miss, seen.at.clone()));
+        self.points.seen.iter().find_map(missing)
+    }
 }

@@ -88,8 +88,10 @@ fn wanted(compiled: &Compiled<'_>, condition: &Stated<'_>) -> Options {
             wanted[outputs.margin].0 = true;
         }
     }
-    for (_, output) in &compiled.results {
-        wanted[*output] = (true, true);
+    for (symbol, output) in &compiled.results {
+        if compiled.is_tabulated(symbol, condition.name) {
+            wanted[*output] = (true, true);
+        }
     }
     for outputs in &compiled.stress {
         if outputs.demand.applies.to(condition.lasts.is_some()) {

@@ -520,6 +520,23 @@ impl Compiled<'_> {
         self.space.laws[element]
     }
 
+    /// Whether a result is tabulated in a condition: one that the derivation defines for a condition belongs there only, and
+    /// where prose asks for it by `at("condition", ...)`; anything else has a meaning everywhere.
+    pub fn is_tabulated(&self, symbol: &str, condition: &str) -> bool {
+        let worksheet = &self.material.worksheet;
+        let defined_in = worksheet.derivation.iter().find_map(|line| match &line.what {
+            DerivationKind::Define { name, .. } if name.value == symbol => line.condition.as_ref(),
+            _ => None,
+        });
+        let asked = |condition: &str| {
+            worksheet.recalls.iter().any(|recall| {
+                recall.names.iter().any(|name| name.value == symbol)
+                    && recall.source.contains(&format!("\"{condition}\""))
+            })
+        };
+        defined_in.is_none_or(|own| own.value == condition) || asked(condition)
+    }
+
     /// Unit in which a name's value is printed: as written for an input, by size for a result.
     pub fn unit_of_name(&self, name: &str, value: f64) -> Unit {
         match self.inputs.iter().find(|input| input.symbol == name) {

@@ -495,7 +495,8 @@ pub(super) fn results(judge: &Judge<'_>) -> Vec<ResultFinding> {
     let mut rows = Vec::new();
     for (symbol, output) in &compiled.results {
         let mut of_symbol = Vec::new();
-        for (index, condition) in judge.conditions.iter().enumerate() {
+        let tabulated = |condition: &Stated<'_>| compiled.is_tabulated(symbol, condition.name);
+        for (index, condition) in judge.conditions.iter().enumerate().filter(|(_, c)| tabulated(c)) {
             let end = |highest: bool| {
                 let found = judge.end(*output, highest, |c| c == index);
                 match found {

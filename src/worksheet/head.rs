@@ -123,9 +123,9 @@ fn revisions(node: &Node, diagnostics: &mut Diagnostics) -> Vec<[String; 3]> {
     revisions
 }
 
-/// Whether `text` is a date of the Gregorian calendar in the form of ISO 8601, `2026-01-31`; reports it otherwise.
-fn calendar_date(text: &str, place: &Place, diagnostics: &mut Diagnostics) -> bool {
-    let right = date_parts(text).is_some_and(|(year, month, day)| {
+/// Whether `text` is a date of the Gregorian calendar in the form of ISO 8601, `2026-01-31`.
+pub fn is_date(text: &str) -> bool {
+    date_parts(text).is_some_and(|(year, month, day)| {
         let leap = year % 4 == 0 && (year % 100 != 0 || year % 400 == 0);
         let days = match month {
             2 if leap => 29,
@@ -135,7 +135,12 @@ fn calendar_date(text: &str, place: &Place, diagnostics: &mut Diagnostics) -> bo
             _ => 0,
         };
         year >= 1900 && (1..=days).contains(&day)
-    });
+    })
+}
+
+/// [`is_date`], and reports it otherwise.
+fn calendar_date(text: &str, place: &Place, diagnostics: &mut Diagnostics) -> bool {
+    let right = is_date(text);
     if !right {
         diagnostics.push(
             Diagnostic::error(place, format!("`{text}` is not a date of the calendar"))

@@ -19,6 +19,7 @@ mod records;
 pub use basis::{basis_text, quantity_as, source_of};
 pub use fence::WORDS;
 pub use flow::flow;
+pub use head::is_date;
 pub use read::read;
 
 use crate::diagnostic::Diagnostics;

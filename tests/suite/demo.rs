@@ -117,3 +117,24 @@ fn findings_come_back_from_json_as_they_were() {
     let back: Findings = serde_json::from_str(&text).unwrap();
     assert_eq!(back, found);
 }
+
+/// Prints how long each demonstration note takes to study and to typeset.
+#[test]
+#[ignore = "prints times"]
+fn times() {
+    for sheet in SHEETS {
+        let files = bundle(sheet);
+        let start = std::time::Instant::now();
+        let found = study(&files, sheet).unwrap();
+        let studied = start.elapsed();
+        let issue =
+            Issue { number: 1, date: found.note.date.clone(), status: Status::Issued, program: String::new() };
+        let sources = report::source(&found, &issue, None, &files).unwrap();
+        let sourced = start.elapsed() - studied;
+        let pdf = report::compile(&sources).unwrap();
+        let all = start.elapsed();
+        println!("{sheet}: studied {studied:.1?}, sources {sourced:.1?}, typeset {:.1?}", all - studied - sourced);
+        let path = std::path::Path::new(env!("CARGO_TARGET_TMPDIR")).join(sheet.replace(".md", ".pdf"));
+        std::fs::write(path, pdf).unwrap();
+    }
+}

@@ -1,5 +1,6 @@
 //! Every test of the project, in one binary.
 
+mod caution;
 mod circuit;
 mod demo;
 mod device;
@@ -11,6 +12,8 @@ mod numeric;
 mod quantity;
 mod report;
 mod solve;
+mod spread;
+mod stress;
 mod study;
 mod worksheet;
 mod yaml;

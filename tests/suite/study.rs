@@ -157,7 +157,7 @@ fn mistakes_are_told_with_file_line_column_and_nearest_spelling() {
             "(V_cc - R1) / R1",
             "the two sides of `-` do not fit: V on the left, Ω on the right",
         ),
-        ("k = I_C / I_B", "k = I_C / k", "circle"),
+        ("k = I_C / I_B", "k = I_C / k", "`k` is defined by itself"),
         ("npn: X-1", "npn: X-2", "X-2"),
         (
             "c.V <= 0.4 V",

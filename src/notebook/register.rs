@@ -1,0 +1,234 @@
+//! The register of issues: `issued/register.json`, a readable file that says of every issue what it was made from.
+
+use std::collections::BTreeMap;
+use std::path::Path;
+
+use serde::{Deserialize, Serialize};
+
+use crate::diagnostic::{Diagnostic, Diagnostics};
+use crate::source::{Digest, Place};
+use crate::study::{Findings, Verdict};
+
+use super::shelf;
+
+/// Name of the register in the folder of issues.
+pub const FILE: &str = "register.json";
+/// Version of the register's shape.
+const FORMAT: u32 = 1;
+/// The largest register that is read, in bytes.
+const LARGEST: u64 = 256 << 20;
+
+/// Every issue of every note, by note number; issues in ascending order.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Register {
+    register: u32,
+    pub notes: BTreeMap<String, Vec<Entry>>,
+}
+
+/// One issue of a note.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Entry {
+    pub issue: u32,
+    pub revision: String,
+    /// Date of issue as printed.
+    pub date: String,
+    pub title: String,
+    /// Program version and findings schema that made it.
+    pub program: String,
+    pub schema: u32,
+    /// Names of checker and approver were left out because something moved since the issue before.
+    pub signatures_cleared: bool,
+    pub verdicts: Verdicts,
+    pub pdf: Stored,
+    pub findings: Stored,
+    /// One digest over all inputs.
+    pub digest: Digest,
+    pub inputs: Vec<Input>,
+}
+
+/// A file in the folder of issues.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Stored {
+    pub file: String,
+    pub digest: Digest,
+}
+
+/// One file that a note was made from.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Input {
+    #[serde(rename = "as")]
+    pub role: Role,
+    pub path: String,
+    pub digest: Digest,
+}
+
+/// What an input file is to a note.
+#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Role {
+    Worksheet,
+    Settings,
+    Policy,
+    Part,
+    Image,
+    Logo,
+    Template,
+}
+
+/// How many criteria, stress lines and asserting lines of a derivation have which verdict.
+#[derive(Clone, Copy, PartialEq, Eq, Debug, Default, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Verdicts {
+    pub met: usize,
+    pub met_on_assumptions: usize,
+    pub not_met: usize,
+    pub not_shown: usize,
+}
+
+impl Verdicts {
+    pub fn of(findings: &Findings) -> Verdicts {
+        let mut counts = Verdicts::default();
+        for criterion in &findings.criteria {
+            match criterion.verdict {
+                Verdict::Met => counts.met += 1,
+                Verdict::MetOnAssumptions { .. } => counts.met_on_assumptions += 1,
+                Verdict::NotMet => counts.not_met += 1,
+                Verdict::NotShown { .. } => counts.not_shown += 1,
+            }
+        }
+        for line in &findings.stress {
+            match line.verdict.as_str() {
+                "met" => counts.met += 1,
+                "met-on-assumptions" => counts.met_on_assumptions += 1,
+                "not-met" => counts.not_met += 1,
+                _ => counts.not_shown += 1,
+            }
+        }
+        for step in findings.derivation.iter().filter(|step| step.symbol.is_none()) {
+            match step.holds {
+                Some(true) => counts.met += 1,
+                Some(false) => counts.not_met += 1,
+                None => counts.not_shown += 1,
+            }
+        }
+        counts
+    }
+
+    /// Every criterion is met, on assumptions or not.
+    pub fn all_met(&self) -> bool {
+        self.not_met == 0 && self.not_shown == 0
+    }
+}
+
+impl Default for Register {
+    fn default() -> Self {
+        Register { register: FORMAT, notes: BTreeMap::new() }
+    }
+}
+
+impl Register {
+    /// The latest issue of a note.
+    pub fn last(&self, note: &str) -> Option<&Entry> {
+        self.notes.get(note).and_then(|issues| issues.last())
+    }
+
+    /// The latest issue of every note with its number, by path and digest of its worksheet.
+    pub fn by_worksheet(&self) -> BTreeMap<(&str, Digest), (&str, &Entry)> {
+        let latest = self.notes.iter().filter_map(|(note, issues)| Some((note.as_str(), issues.last()?)));
+        latest
+            .filter_map(|(note, entry)| {
+                let worksheet = entry.inputs.iter().find(|input| input.role == Role::Worksheet)?;
+                Some(((worksheet.path.as_str(), worksheet.digest), (note, entry)))
+            })
+            .collect()
+    }
+
+    /// Names of every file that some issue consists of.
+    pub fn stored(&self) -> impl Iterator<Item = &Stored> {
+        self.notes.values().flatten().flat_map(|entry| [&entry.pdf, &entry.findings])
+    }
+
+    /// The register as its file holds it: the same register, the same bytes.
+    ///
+    /// # Errors
+    /// None that a register can cause; the writer's are passed on.
+    pub fn to_bytes(&self) -> Result<Vec<u8>, Diagnostic> {
+        let mut bytes = serde_json::to_vec_pretty(self)
+            .map_err(|error| Diagnostic::bare(format!("the register cannot be written: {error}")))?;
+        bytes.push(b'\n');
+        Ok(bytes)
+    }
+}
+
+/// Reads the register of a notebook; a notebook that was never issued has an empty one.
+///
+/// # Errors
+/// A register that was damaged or written by a newer version; issues without a register. Nothing is ever issued over
+/// either: the numbers of the issues would begin anew.
+pub fn read(root: &Path) -> Result<Register, Diagnostics> {
+    let path = format!("{}/{FILE}", shelf::FOLDER);
+    let place = |line: usize, column: usize| {
+        Place::new(&path.as_str().into(), line.max(1) as u32, column.max(1) as u32, 0)
+    };
+    let full = root.join(shelf::FOLDER).join(FILE);
+    let size = match std::fs::metadata(&full) {
+        Ok(about) => about.len(),
+        Err(error) if error.kind() == std::io::ErrorKind::NotFound => return without(root),
+        Err(error) => {
+            return Err(Diagnostic::error(&place(1, 1), format!("cannot be read: {error}")).into());
+        }
+    };
+    if size > LARGEST {
+        return Err(Diagnostic::error(&place(1, 1), format!("the register has {size} bytes")).into());
+    }
+    let restore = "the register as the last run left it; restore it from a copy";
+    let bytes = std::fs::read(&full)
+        .map_err(|error| Diagnostic::error(&place(1, 1), format!("cannot be read: {error}")))?;
+    let malformed = |error: serde_json::Error| {
+        let at = place(error.line(), error.column());
+        Diagnostics::from(
+            Diagnostic::error(&at, format!("the register is damaged: {error}")).expected(restore),
+        )
+    };
+    #[derive(Deserialize)]
+    struct Cover {
+        register: u32,
+    }
+    let cover: Cover = serde_json::from_slice(&bytes).map_err(malformed)?;
+    if cover.register != FORMAT {
+        let message = format!("the register has format {}", cover.register);
+        let error = Diagnostic::error(&place(1, 1), message);
+        return Err(error.expected(format!("format {FORMAT}, which this version writes")).into());
+    }
+    let register: Register = serde_json::from_slice(&bytes).map_err(malformed)?;
+    let mut errors = Diagnostics::default();
+    for (note, issues) in &register.notes {
+        let ascending = issues.windows(2).all(|pair| pair[0].issue < pair[1].issue);
+        if issues.is_empty() || !ascending || issues.iter().any(|entry| entry.issue == 0) {
+            let message = format!("the issues of {note} are not numbered in ascending order");
+            errors.push(Diagnostic::error(&place(1, 1), message).expected(restore));
+        }
+    }
+    for stored in register.stored().filter(|stored| !shelf::is_plain_name(&stored.file)) {
+        let message = format!("`{}` is no file of this folder", stored.file);
+        errors.push(Diagnostic::error(&place(1, 1), message).expected(restore));
+    }
+    if errors.has_errors() { Err(errors) } else { Ok(register) }
+}
+
+/// No register: right for a new notebook, and only for that.
+fn without(root: &Path) -> Result<Register, Diagnostics> {
+    let issued = shelf::names(root)?;
+    match issued.iter().find(|name| shelf::is_issue(name)) {
+        None => Ok(Register::default()),
+        Some(name) => {
+            Err(Diagnostic::bare(format!("{}/ holds issues such as {name}, but no {FILE}", shelf::FOLDER))
+                .expected("the register as the last run left it; restore it from a copy")
+                .into())
+        }
+    }
+}
