@@ -4,6 +4,7 @@
 
 pub mod source;
 pub mod diagnostic;
+pub mod numeric;
 pub mod markup;
 pub mod quantity;
 pub mod formula;

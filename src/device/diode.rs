@@ -1,8 +1,12 @@
-//! Diode and Zener: exponential junction with series resistance; breakdown as an exponential of its own.
+//! Diode and Zener: exponential junction (Shockley 1949) with series resistance; breakdown as an exponential of its own.
 
 use serde::{Deserialize, Serialize};
 
-use super::{REFERENCE_TEMPERATURE, thermal_voltage};
+use super::{REFERENCE_TEMPERATURE, exponential, growth, leakage, saturation_growth, thermal_voltage};
+use crate::numeric;
+
+/// Breakdown voltage (V) below which no temperature takes a junction.
+const LEAST_BREAKDOWN: f64 = 0.1;
 
 /// Parameters at the reference temperature. `breakdown_voltage` is infinite for a plain diode.
 #[derive(Clone, Copy, PartialEq, Debug, Serialize, Deserialize)]
@@ -32,21 +36,26 @@ pub struct Diode {
 pub struct AtTemperature {
     pub parameters: Diode,
     pub thermal_voltage: f64,
+    /// e^(-V_Z / slope): the breakdown exponential at zero bias.
+    broken_at_zero: f64,
 }
 
 impl Diode {
     /// Applies the temperature laws at junction temperature `t_j` (K).
     pub fn at(&self, t_j: f64) -> AtTemperature {
-        let ratio = t_j / REFERENCE_TEMPERATURE;
-        let gap = self.energy_gap / thermal_voltage(t_j) * (ratio - 1.0);
-        let growth = (self.saturation_exponent * libm::log(ratio) + gap) / self.emission_coefficient;
+        let grown = saturation_growth(self.energy_gap, self.saturation_exponent, t_j);
+        let rise = t_j - REFERENCE_TEMPERATURE;
+        let breakdown_voltage =
+            (self.breakdown_voltage + self.breakdown_coefficient * rise).max(LEAST_BREAKDOWN);
+        // At zero bias the exponential has not quite vanished; what is left of it there is taken away everywhere.
+        let (broken_at_zero, _) = exponential(-breakdown_voltage / self.breakdown_slope);
         AtTemperature {
             thermal_voltage: thermal_voltage(t_j),
+            broken_at_zero,
             parameters: Diode {
-                saturation_current: self.saturation_current * libm::exp(growth),
-                leakage: self.leakage * libm::exp((t_j - REFERENCE_TEMPERATURE) / self.leakage_e_fold),
-                breakdown_voltage: self.breakdown_voltage
-                    + self.breakdown_coefficient * (t_j - REFERENCE_TEMPERATURE),
+                saturation_current: self.saturation_current * numeric::exp(grown / self.emission_coefficient),
+                leakage: self.leakage * numeric::exp(rise / self.leakage_e_fold),
+                breakdown_voltage,
                 ..*self
             },
         }
@@ -55,21 +64,22 @@ impl Diode {
 
 impl AtTemperature {
     /// Current (A) from anode to cathode through the junction at `v` (V, series resistance outside) and its derivative.
+    ///
+    /// Zero at zero bias, of the sign of `v` elsewhere, its derivative nowhere negative; finite at any finite `v`.
     pub fn current(&self, v: f64) -> (f64, f64) {
         let p = &self.parameters;
         let n_vt = p.emission_coefficient * self.thermal_voltage;
-        let grown = libm::exp(v / n_vt);
-        let mut i = p.saturation_current * (grown - 1.0);
-        let mut g = p.saturation_current * grown / n_vt;
-        if p.leakage > 0.0 && v < 0.0 {
-            let left = libm::exp(v / self.thermal_voltage);
-            i -= p.leakage * (1.0 - left) * (1.0 - left);
-            g += 2.0 * p.leakage * (1.0 - left) * left / self.thermal_voltage;
-        }
+        let (grown, slope) = growth(v / n_vt);
+        let mut i = p.saturation_current * grown;
+        let mut g = p.saturation_current * slope / n_vt;
+        let (leaked, d_leaked) = leakage(p.leakage, v, self.thermal_voltage);
+        i += leaked;
+        g += d_leaked;
         if p.breakdown_voltage.is_finite() {
-            let broken = p.breakdown_current * libm::exp((-v - p.breakdown_voltage) / p.breakdown_slope);
-            i -= broken;
-            g += broken / p.breakdown_slope;
+            let scale = p.breakdown_current / (1.0 - self.broken_at_zero);
+            let (broken, slope) = exponential((-v - p.breakdown_voltage) / p.breakdown_slope);
+            i -= scale * (broken - self.broken_at_zero);
+            g += scale * slope / p.breakdown_slope;
         }
         (i, g)
     }

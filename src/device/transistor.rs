@@ -2,7 +2,11 @@
 
 use serde::{Deserialize, Serialize};
 
-use super::{REFERENCE_TEMPERATURE, thermal_voltage};
+use super::{REFERENCE_TEMPERATURE, growth, leakage, saturation_growth, thermal_voltage};
+use crate::numeric;
+
+/// `1 - V_BC / V_AF - V_BE / V_AR` below which the base charge goes on along the tangent to its reciprocal.
+const LEAST_WIDTH: f64 = 0.1;
 
 /// Parameters at the reference temperature. Infinite `early_*` and `knee_current_*` and zero `*_leakage` switch the
 /// effect off, which leaves the transport form of Ebers and Moll.
@@ -62,22 +66,24 @@ pub struct AtTemperature {
 
 impl Transistor {
     /// Applies the temperature laws at junction temperature `t_j` (K).
+    ///
+    /// A knee current below eight times the saturation current is raised to that: no transistor has one, and the base
+    /// charge would stop being real.
     pub fn at(&self, t_j: f64) -> AtTemperature {
-        let ratio = t_j / REFERENCE_TEMPERATURE;
-        let gap = self.energy_gap / thermal_voltage(t_j) * (ratio - 1.0);
-        let log_ratio = libm::log(ratio);
-        let growth = self.saturation_exponent * log_ratio + gap;
-        let gain = libm::exp(self.gain_exponent * log_ratio);
-        let leakage = libm::exp(growth / self.emitter_leakage_emission) / gain;
+        let grown = saturation_growth(self.energy_gap, self.saturation_exponent, t_j);
+        let gain = numeric::exp(self.gain_exponent * libm::log(t_j / REFERENCE_TEMPERATURE));
+        let side = numeric::exp(grown / self.emitter_leakage_emission) / gain;
+        let saturation_current = self.saturation_current * numeric::exp(grown);
         AtTemperature {
             thermal_voltage: thermal_voltage(t_j),
             parameters: Transistor {
-                saturation_current: self.saturation_current * libm::exp(growth),
+                saturation_current,
                 gain_forward: self.gain_forward * gain,
                 gain_reverse: self.gain_reverse * gain,
-                emitter_leakage: self.emitter_leakage * leakage,
+                knee_current_forward: self.knee_current_forward.max(8.0 * saturation_current),
+                emitter_leakage: self.emitter_leakage * side,
                 cutoff_current: self.cutoff_current
-                    * libm::exp((t_j - REFERENCE_TEMPERATURE) / self.cutoff_e_fold),
+                    * numeric::exp((t_j - REFERENCE_TEMPERATURE) / self.cutoff_e_fold),
                 ..*self
             },
         }
@@ -87,8 +93,8 @@ impl Transistor {
 impl AtTemperature {
     /// Collector and base current of the intrinsic transistor (without terminal resistances) at `v_be`, `v_bc` (V).
     ///
-    /// The cut-off element carries `I_CBO * tanh`-like saturation: its full value under reverse bias of a few thermal
-    /// voltages, nothing at zero bias, and no forward conduction of its own.
+    /// Finite, with continuous derivatives, at any finite voltages. The cut-off element carries its full current under
+    /// a reverse bias of a few thermal voltages, nothing at zero bias, and does not conduct forward.
     pub fn currents(&self, v_be: f64, v_bc: f64) -> Currents {
         let p = &self.parameters;
         let n_vt = p.emission_coefficient * self.thermal_voltage;
@@ -97,52 +103,47 @@ impl AtTemperature {
         let (leak, d_leak) =
             junction(p.emitter_leakage, v_be, p.emitter_leakage_emission * self.thermal_voltage);
 
-        // Base charge: q_b = q_1 / 2 * (1 + sqrt(1 + 4 q_2)), Early effect in q_1, the knee in q_2.
-        let slope = 1.0 - v_bc / p.early_voltage_forward - v_be / p.early_voltage_reverse;
-        let slope = slope.max(1e-3);
-        let q_1 = 1.0 / slope;
-        let (dq_1_dv_be, dq_1_dv_bc) =
-            (q_1 * q_1 / p.early_voltage_reverse, q_1 * q_1 / p.early_voltage_forward);
-        let q_2 = (forward / p.knee_current_forward).max(-0.24);
-        let root = (1.0 + 4.0 * q_2).sqrt();
+        // Base charge: q_b = q_1 / 2 * (1 + sqrt(1 + 4 q_2)), Early effect in q_1, the knee in q_2 >= -1/8.
+        let width = 1.0 - v_bc / p.early_voltage_forward - v_be / p.early_voltage_reverse;
+        let (q_1, dq_1) = reciprocal(width);
+        let (dq_1_dv_be, dq_1_dv_bc) = (-dq_1 / p.early_voltage_reverse, -dq_1 / p.early_voltage_forward);
+        let root = (1.0 + 4.0 * (forward / p.knee_current_forward)).sqrt();
         let q_b = q_1 * (1.0 + root) / 2.0;
-        let dq_b_dq_2 = q_1 / root;
-        let dq_b_dv_be = dq_1_dv_be * (1.0 + root) / 2.0 + dq_b_dq_2 * d_forward / p.knee_current_forward;
+        let dq_b_dv_be = dq_1_dv_be * (1.0 + root) / 2.0 + q_1 / root * (d_forward / p.knee_current_forward);
         let dq_b_dv_bc = dq_1_dv_bc * (1.0 + root) / 2.0;
 
         let transport = (forward - reverse) / q_b;
         let dt_dv_be = (d_forward - transport * dq_b_dv_be) / q_b;
         let dt_dv_bc = (-d_reverse - transport * dq_b_dv_bc) / q_b;
 
-        // Cut-off current flows from collector to base under reverse bias.
-        let (cutoff, d_cutoff) = cutoff(p.cutoff_current, v_bc, self.thermal_voltage);
+        // The cut-off current flows from collector to base.
+        let (cutoff, d_cutoff) = leakage(p.cutoff_current, v_bc, self.thermal_voltage);
 
         Currents {
-            i_c: transport - reverse / p.gain_reverse + cutoff,
-            i_b: forward / p.gain_forward + leak + reverse / p.gain_reverse - cutoff,
+            i_c: transport - reverse / p.gain_reverse - cutoff,
+            i_b: forward / p.gain_forward + leak + reverse / p.gain_reverse + cutoff,
             di_c_dv_be: dt_dv_be,
-            di_c_dv_bc: dt_dv_bc - d_reverse / p.gain_reverse + d_cutoff,
+            di_c_dv_bc: dt_dv_bc - d_reverse / p.gain_reverse - d_cutoff,
             di_b_dv_be: d_forward / p.gain_forward + d_leak,
-            di_b_dv_bc: d_reverse / p.gain_reverse - d_cutoff,
+            di_b_dv_bc: d_reverse / p.gain_reverse + d_cutoff,
         }
     }
 }
 
-/// Exponential junction current and its derivative.
+/// Current of an exponential junction and its derivative.
 fn junction(saturation: f64, v: f64, n_vt: f64) -> (f64, f64) {
     if saturation == 0.0 {
         return (0.0, 0.0);
     }
-    let grown = libm::exp(v / n_vt);
-    (saturation * (grown - 1.0), saturation * grown / n_vt)
+    let (grown, slope) = growth(v / n_vt);
+    (saturation * grown, saturation * slope / n_vt)
 }
 
-/// The cut-off element: `I (1 - e^(v_bc / V_T))` under reverse bias, smoothly nothing under forward bias.
-fn cutoff(current: f64, v_bc: f64, v_t: f64) -> (f64, f64) {
-    if current == 0.0 || v_bc >= 0.0 {
-        return (0.0, 0.0);
-    }
-    let left = libm::exp(v_bc / v_t);
-    // Squared, so that value and slope both vanish at zero bias.
-    (current * (1.0 - left) * (1.0 - left), -2.0 * current * (1.0 - left) * left / v_t)
+/// `1 / width` and its derivative; below [`LEAST_WIDTH`], where a real base would long be punched through or turned over,
+/// the tangent, so that the base charge stays positive and its derivative continuous.
+fn reciprocal(width: f64) -> (f64, f64) {
+    let at = width.max(LEAST_WIDTH);
+    let value = 1.0 / at;
+    let slope = -value * value;
+    (value + slope * (width - at), slope)
 }
