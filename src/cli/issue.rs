@@ -8,7 +8,7 @@ use super::progress::Progress;
 use super::{Console, House, IssueArguments, UNUSABLE, press, show};
 
 pub(super) fn run(arguments: &IssueArguments, house: &House, console: &mut Console) -> u8 {
-    let notebook = match Notebook::open(&arguments.folder.folder) {
+    let notebook = match Notebook::open(&arguments.folder.path()) {
         Ok(notebook) => notebook,
         Err(errors) => {
             show::diagnostics(console, None, &errors);
@@ -47,6 +47,11 @@ pub(super) fn run(arguments: &IssueArguments, house: &House, console: &mut Conso
                 issued.due.join("; ")
             );
             show::line(console, &text);
+            let left_out = issued.entry.withheld.names();
+            if !left_out.is_empty() {
+                let names = left_out.join(" and ");
+                show::line(console, &format!("  left out, since this issue is still to be checked: {names}"));
+            }
         }
         for current in outcome.current.iter().filter(|current| !current.entry.verdicts.all_met()) {
             let text = format!(
@@ -80,6 +85,7 @@ fn as_json(issued: &Issued) -> Value {
         "pdf": format!("{}/{}", shelf::FOLDER, entry.pdf.file),
         "findings": format!("{}/{}", shelf::FOLDER, entry.findings.file),
         "signatures_cleared": entry.signatures_cleared,
+        "withheld": entry.withheld,
         "verdicts": entry.verdicts,
         "because": issued.due,
         "moves": issued.moves,

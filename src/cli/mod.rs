@@ -77,9 +77,21 @@ enum Command {
 
 #[derive(Args)]
 struct Folder {
-    /// The notebook: a folder with a notebook.yaml.
-    #[arg(value_name = "DIR", default_value = ".")]
-    folder: PathBuf,
+    /// The notebook: a folder with a notebook.yaml; otherwise the notebook `worksheets`, or the folder here.
+    #[arg(value_name = "DIR")]
+    folder: Option<PathBuf>,
+}
+
+impl Folder {
+    fn path(&self) -> PathBuf {
+        self.folder.clone().unwrap_or_else(here)
+    }
+}
+
+/// The notebook that is meant where none is named: `worksheets`, if it is one, or the current folder.
+fn here() -> PathBuf {
+    let usual = PathBuf::from("worksheets");
+    if usual.join(crate::settings::FILE).is_file() { usual } else { PathBuf::from(".") }
 }
 
 #[derive(Args)]
@@ -138,7 +150,7 @@ struct RedlineArguments {
     /// Number of a note, or the notebook's folder to see all its notes.
     #[arg(value_name = "NOTE")]
     note: Option<String>,
-    /// The notebook of that note, where it is not the folder here.
+    /// The notebook of that note; otherwise the notebook `worksheets`, or the folder here.
     #[arg(value_name = "DIR")]
     folder: Option<PathBuf>,
     #[command(flatten)]

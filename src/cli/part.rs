@@ -12,7 +12,7 @@ use crate::redline;
 use super::{Console, MET, PartArguments, UNUSABLE, show};
 
 pub(super) fn run(arguments: &PartArguments, console: &mut Console) -> u8 {
-    let notebook = match Notebook::open(&arguments.folder.folder) {
+    let notebook = match Notebook::open(&arguments.folder.path()) {
         Ok(notebook) => notebook,
         Err(errors) => {
             show::diagnostics(console, None, &errors);

@@ -12,7 +12,7 @@ use crate::redline::{Cause, FileMove, Moves};
 use crate::study::Verdict;
 
 use super::progress::Progress;
-use super::{Console, House, RedlineArguments, UNUSABLE, show};
+use super::{Console, House, RedlineArguments, UNUSABLE, here, show};
 
 /// What is kept of a note.
 struct Redlined {
@@ -93,7 +93,6 @@ pub(super) fn run(arguments: &RedlineArguments, house: &House, console: &mut Con
 
 /// The note and the folder that are meant: a single argument that is a folder is no note number.
 fn asked(arguments: &RedlineArguments) -> (Option<&str>, PathBuf) {
-    let here = || PathBuf::from(".");
     match (arguments.note.as_deref(), &arguments.folder) {
         (note, Some(folder)) => (note, folder.clone()),
         (Some(only), None) if Path::new(only).is_dir() => (None, PathBuf::from(only)),

@@ -35,7 +35,7 @@ struct Judged {
 }
 
 pub(super) fn run(arguments: &VerifyArguments, house: &House, console: &mut Console) -> u8 {
-    let notebook = match Notebook::open(&arguments.folder.folder) {
+    let notebook = match Notebook::open(&arguments.folder.path()) {
         Ok(notebook) => notebook,
         Err(errors) => {
             show::diagnostics(console, None, &errors);

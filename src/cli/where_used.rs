@@ -8,7 +8,7 @@ use crate::notebook::{self, Notebook, Uses};
 use super::{Console, MET, UNUSABLE, WhereUsedArguments, show};
 
 pub(super) fn run(arguments: &WhereUsedArguments, console: &mut Console) -> u8 {
-    let notebook = match Notebook::open(&arguments.folder.folder) {
+    let notebook = match Notebook::open(&arguments.folder.path()) {
         Ok(notebook) => notebook,
         Err(errors) => {
             show::diagnostics(console, None, &errors);

@@ -9,7 +9,7 @@ use crate::report::{Issue, Status};
 use crate::source::{Bundle, Digest};
 use crate::study::Findings;
 
-use super::register::{self, Entry, Register, Stored, Verdicts};
+use super::register::{self, Entry, Register, Stored, Verdicts, Withheld};
 use super::scan::{Standing, broke_down, scan};
 use super::sheet::Contents;
 use super::shelf::{self, Aside, Shelf};
@@ -171,10 +171,8 @@ fn make(
     notebook.parts.translate(&mut warnings);
     let moves = standing.last.map(|last| moved(&notebook.root, last, &findings));
     let cleared = moves.as_ref().is_some_and(Moves::clears_signatures);
-    if cleared {
-        // Nobody has seen these numbers yet: the names stay in the worksheet, the places to sign are empty.
-        (findings.note.checker, findings.note.approver) = (None, None);
-    }
+    // Nobody has seen these numbers yet: the names stay in the worksheet, the places to sign are empty.
+    let withheld = Withheld::take(&mut findings.note, cleared, standing.last.map(|last| &last.withheld));
     let number = standing.last.map_or(1, |last| last.issue.saturating_add(1));
     let issue = Issue {
         number,
@@ -198,6 +196,7 @@ fn make(
         program: press.calculation.program.to_owned(),
         schema: findings.schema,
         signatures_cleared: cleared,
+        withheld,
         verdicts: Verdicts::of(&findings),
         pdf: Stored { file: pdf_name, digest: pdf.digest },
         findings: Stored { file: findings_name, digest: json.digest },

@@ -102,7 +102,9 @@ impl Parts {
             Diagnostic::error(&origin, format!("byte {at} is no text")).expected("YAML in UTF-8")
         })?;
         for (key, range) in ranges(text, &path)? {
-            if let Some(first) = self.records.get(&key.name) {
+            if let Some(first) = self.records.get_mut(&key.name) {
+                // Which of the two is meant nobody can tell, so that no note is made from either.
+                first.broken = true;
                 let message = format!("there are two records `{}`", key.name);
                 problems.push(Diagnostic::error(&key.place, message).expected(format!(
                     "a name of its own; the first stands in {} on line {}",

@@ -7,7 +7,7 @@ use serde::{Deserialize, Serialize};
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::source::{Digest, Place};
-use crate::study::{Findings, Verdict};
+use crate::study::{Findings, NoteHead, Verdict};
 
 use super::shelf;
 
@@ -38,14 +38,49 @@ pub struct Entry {
     /// Program version and findings schema that made it.
     pub program: String,
     pub schema: u32,
-    /// Names of checker and approver were left out because something moved since the issue before.
+    /// Something moved since the issue before, so that nobody has checked or approved this one yet.
     pub signatures_cleared: bool,
+    /// Names that the worksheet gives and that were left out of this issue.
+    pub withheld: Withheld,
     pub verdicts: Verdicts,
     pub pdf: Stored,
     pub findings: Stored,
     /// One digest over all inputs.
     pub digest: Digest,
     pub inputs: Vec<Input>,
+}
+
+/// Names of checker and approver that a worksheet gives and that stand for an earlier issue, not for this one.
+///
+/// A name that was left out stays out of later issues, also of such that move nothing, until the worksheet gives another
+/// or has been issued without it: whoever signed an issue long ago has not seen what moved since.
+#[derive(Clone, PartialEq, Eq, Debug, Default, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Withheld {
+    pub checker: Option<String>,
+    pub approver: Option<String>,
+}
+
+impl Withheld {
+    /// Takes the names out of `head` that do not stand for this issue: all of them where something `moved` since `last`,
+    /// and those that `last` left out already.
+    pub fn take(head: &mut NoteHead, moved: bool, last: Option<&Withheld>) -> Withheld {
+        let one = |name: &mut Option<String>, before: Option<&String>| {
+            name.take_if(|name| moved || before == Some(&*name))
+        };
+        Withheld {
+            checker: one(&mut head.checker, last.and_then(|last| last.checker.as_ref())),
+            approver: one(&mut head.approver, last.and_then(|last| last.approver.as_ref())),
+        }
+    }
+
+    /// The names, checker first, each once.
+    pub fn names(&self) -> Vec<&str> {
+        let mut names: Vec<&str> =
+            [&self.checker, &self.approver].into_iter().flatten().map(String::as_str).collect();
+        names.dedup();
+        names
+    }
 }
 
 /// A file in the folder of issues.

@@ -2,6 +2,9 @@
 
 use std::collections::BTreeMap;
 
+use serde_json::Value;
+
+use crate::diagnostic::Diagnostics;
 use crate::markup::Math;
 use crate::quantity::{Kind, Shown, Unit};
 use crate::source::Digest;
@@ -22,7 +25,7 @@ const MARGIN: f64 = 1e-3;
 pub fn compare(since: u32, old: &Findings, new: &Findings) -> Moves {
     let files = files(&old.files, &new.files);
     let rewritten = files.iter().any(|(path, _)| path.ends_with(".md"));
-    Moves {
+    let mut moves = Moves {
         since,
         program: (old.program != new.program).then(|| (old.program.clone(), new.program.clone())),
         inputs: inputs(&facts(old), &facts(new)),
@@ -31,6 +34,36 @@ pub fn compare(since: u32, old: &Findings, new: &Findings) -> Moves {
         wording: words_moved(old, new, rewritten),
         files,
         incomparable: None,
+    };
+    // What no list above speaks of (the range of a figure, a description) must not pass for nothing.
+    if rewritten && !moves.clears_signatures() {
+        moves.wording = printed(old) != printed(new);
+    }
+    moves
+}
+
+/// Everything of a note that somebody who signs it answers for: without the places of things in files, without digests,
+/// and without those parts of the head that tell of the signing itself.
+fn printed(findings: &Findings) -> Value {
+    let mut copy = findings.clone();
+    (copy.files, copy.warnings) = (Vec::new(), Diagnostics::default());
+    let head = &mut copy.note;
+    (head.checker, head.approver, head.revisions) = (None, None, Vec::new());
+    (head.revision, head.date) = (String::new(), String::new());
+    // Findings that cannot be told as data are no issue, and never came here.
+    let mut value = serde_json::to_value(&copy).unwrap_or_default();
+    forget(&mut value, &["place", "digest"]);
+    value
+}
+
+fn forget(value: &mut Value, keys: &[&str]) {
+    match value {
+        Value::Object(map) => {
+            map.retain(|key, _| !keys.contains(&key.as_str()));
+            map.values_mut().for_each(|value| forget(value, keys));
+        }
+        Value::Array(items) => items.iter_mut().for_each(|value| forget(value, keys)),
+        _ => {}
     }
 }
 

@@ -136,6 +136,42 @@ fn exit_statuses_tell_met_from_not_met_from_unusable() {
 }
 
 #[test]
+fn the_notebook_is_worksheets_or_the_folder_here_where_none_is_named() {
+    let place = tempfile::tempdir().unwrap();
+    assert_eq!(program(place.path(), &["start", "worksheets"]).status.code(), Some(0));
+    for arguments in [&["where-used", "EX-R1"][..], &["part", "EX-R1"], &["redline"], &["verify"]] {
+        let output = program(place.path(), arguments);
+        assert_eq!(output.status.code(), Some(0), "{arguments:?} {}", text(&output.stderr));
+    }
+    let output = program(place.path(), &["redline", "DN-1"]);
+    assert!(text(&output.stdout).contains("DN-1  ") && text(&output.stdout).contains("never issued"));
+    // Inside the notebook it is the folder here.
+    let output = program(&place.path().join("worksheets"), &["where-used", "EX-R1"]);
+    assert_eq!(text(&output.stdout), "load-switch.md  R1, R2, R3  DN-1  (Load switch)\n");
+    // A folder of that name without settings is no notebook, and does not stand in the way of one.
+    let folder = folder();
+    write(&folder, "worksheets/e.md", &sheet("LB-5", "LBN-120", "1"));
+    let output = program(folder.path(), &["where-used", "LBN-120"]);
+    assert_eq!(text(&output.stdout).lines().count(), 2, "{}", text(&output.stdout));
+}
+
+#[test]
+fn names_left_out_of_a_new_issue_are_told() {
+    let folder = folder();
+    let (_, out, _) = tiny_run(&["issue", path(&folder)]);
+    assert!(!out.contains("left out"));
+    replace(&folder, "d.md", "k: 1 ", "k: 1.1 ");
+    let (_, out, _) = tiny_run(&["issue", path(&folder)]);
+    assert!(
+        out.starts_with(
+            "issued/LB-4-issue-2.pdf  1 met  (d.md changed)\n  left out, since this issue is still to be checked: C. \
+             Checker and B. Boss\n"
+        ),
+        "{out}"
+    );
+}
+
+#[test]
 fn verify_prints_failing_verdicts_first_and_writes_nothing() {
     let folder = folder();
     let (status, out, err) = tiny_run(&["verify", path(&folder)]);

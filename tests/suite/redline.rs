@@ -240,6 +240,31 @@ fn a_name_a_date_and_a_revision_leave_signatures_standing_and_nothing_else_does(
 }
 
 #[test]
+fn what_no_list_speaks_of_still_clears_signatures() {
+    let figure = fixture::findings().figures[0].clone();
+    let mut old = findings();
+    old.figures = vec![figure];
+    let rewritten = |change: &dyn Fn(&mut Findings)| {
+        let mut new = old.clone();
+        new.files.iter_mut().filter(|(path, _)| path == "a.md").for_each(|f| f.1 = Digest::of(b"rewritten"));
+        change(&mut new);
+        compare(1, &old, &new)
+    };
+    // Another range under the same title, another description, another limit of validity.
+    assert!(rewritten(&|new| new.figures[0].x.high *= 2.0).clears_signatures());
+    assert!(rewritten(&|new| new.inputs[0].description = Some("a factor".into())).wording);
+    assert!(rewritten(&|new| new.validity.push("Only indoors.".into())).wording);
+    // A longer head moves every line, and a reader sees none of it.
+    let shifted = rewritten(&|new| {
+        new.inputs.iter_mut().for_each(|input| input.place.line += 1);
+        new.criteria.iter_mut().for_each(|criterion| criterion.place.line += 1);
+        new.digest = Digest::of(b"all, rewritten");
+        new.note.date = "2026-04-01".into();
+    });
+    assert!(!shifted.clears_signatures(), "{shifted:?}");
+}
+
+#[test]
 fn numbers_recalled_in_the_prose_are_no_new_wording() {
     let body = |new: &mut Findings| new.body = vec![Flow::Listing { text: "now 3.4 mA".into() }];
     assert!(!moved(body).wording);

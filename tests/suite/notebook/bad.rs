@@ -99,8 +99,14 @@ fn a_part_file_that_cannot_be_read_is_told_and_blamed() {
     assert!(outcome.diagnostics.0[1].expected.as_ref().unwrap().contains("parts/broken.yaml"));
     assert_eq!(outcome.current.len(), 4);
     write(&folder, "parts/broken.yaml", "LBN-250:\n  kind: npn\n");
-    let found = told(&issue(&folder).diagnostics);
-    assert_eq!(found[0], "parts/transistors.yaml:3:1: there are two records `LBN-250`");
+    std::fs::remove_file(folder.path().join("e.md")).unwrap();
+    let outcome = issue(&folder);
+    let found = told(&outcome.diagnostics);
+    assert!(found.contains(&"parts/transistors.yaml:3:1: there are two records `LBN-250`".to_owned()));
+    // Which of the two is meant nobody can tell: who names it is refused, and nobody else.
+    assert_eq!(outcome.failed, ["a.md", "b.md", "more/c.md"]);
+    assert!(found.contains(&"a.md:18:11: the record of `LBN-250` has errors".to_owned()), "{found:?}");
+    assert!(outcome.issued.is_empty() && outcome.current.len() == 1);
 }
 
 #[test]

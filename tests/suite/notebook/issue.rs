@@ -159,22 +159,54 @@ fn a_new_program_version_is_told_apart_from_changed_inputs() {
 #[test]
 fn names_of_checker_and_approver_go_when_anything_moved_and_stay_when_nothing_did() {
     let folder = folder();
-    issue(&folder);
+    let first = issue(&folder);
+    assert!(first.issued.iter().all(|issued| issued.entry.withheld.names().is_empty()));
+    // The next revision moves nothing: whoever checked issue 1 has checked this one.
+    replace(&folder, "b.md", "revision: A", "revision: B");
+    let outcome = issue(&folder);
+    assert!(!outcome.issued[0].entry.signatures_cleared);
+    assert!(read(&folder, "issued/LB-2-issue-2.pdf").contains("checker Some(\"C. Checker\")"));
     replace(&folder, "a.md", "k: 1 ", "k: 1.2 ");
     let outcome = issue(&folder);
     assert!(outcome.issued[0].entry.signatures_cleared);
     assert!(read(&folder, "issued/LB-1-issue-2.pdf").contains("checker None approver None"));
-    // The next revision moves nothing: whoever checked issue 2 has checked this one.
-    replace(&folder, "a.md", "revision: A", "revision: B");
-    let outcome = issue(&folder);
-    assert_eq!(notes(&outcome.issued), [("LB-1", 3)]);
-    assert!(!outcome.issued[0].entry.signatures_cleared);
-    assert!(read(&folder, "issued/LB-1-issue-3.pdf").contains("checker Some(\"C. Checker\")"));
+    assert_eq!(outcome.issued[0].entry.withheld.names(), ["C. Checker", "B. Boss"]);
     // A word of the prose does move something.
     replace(&folder, "a.md", "# Stage\n", "# Stage\n\nAnother sentence.\n");
     assert!(issue(&folder).issued[0].entry.signatures_cleared);
     // So does a new version of the program.
     assert!(issue_by("2.0.0", &folder, 1).issued.iter().all(|issued| issued.entry.signatures_cleared));
+}
+
+#[test]
+fn a_name_that_was_left_out_stays_out_until_it_is_written_anew() {
+    let folder = folder();
+    issue(&folder);
+    let signed = |issue: u32| {
+        let page = read(&folder, &format!("issued/LB-1-issue-{issue}.pdf"));
+        page.lines().nth(1).unwrap().to_owned()
+    };
+    replace(&folder, "a.md", "k: 1 ", "k: 1.2 ");
+    issue(&folder);
+    // Issue 3 moves nothing, but nobody has checked issue 2 either: the names in the head are those of issue 1.
+    replace(&folder, "a.md", "revision: A", "revision: B");
+    let outcome = issue(&folder);
+    assert_eq!(notes(&outcome.issued), [("LB-1", 3)]);
+    assert!(!outcome.issued[0].entry.signatures_cleared);
+    assert_eq!(outcome.issued[0].entry.withheld.names(), ["C. Checker", "B. Boss"]);
+    assert_eq!(signed(3), "checker None approver None");
+    // Somebody else checks it: that name stands, the approver's is still the old one.
+    replace(&folder, "a.md", "checker: C. Checker", "checker: D. Checker");
+    issue(&folder);
+    assert_eq!(signed(4), "checker Some(\"D. Checker\") approver None");
+    // The approver's name is taken out, and written again by who approves what now stands there.
+    replace(&folder, "a.md", "approver: B. Boss\n", "");
+    issue(&folder);
+    assert_eq!(signed(5), "checker Some(\"D. Checker\") approver None");
+    replace(&folder, "a.md", "checker: D. Checker\n", "checker: D. Checker\napprover: B. Boss\n");
+    let outcome = issue(&folder);
+    assert_eq!(signed(6), "checker Some(\"D. Checker\") approver Some(\"B. Boss\")");
+    assert!(outcome.issued[0].entry.withheld.names().is_empty());
 }
 
 #[test]
