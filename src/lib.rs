@@ -16,6 +16,7 @@ pub mod part;
 pub mod fit;
 pub mod circuit;
 pub mod solve;
+pub mod derive;
 pub mod spread;
 pub mod stress;
 pub mod caution;

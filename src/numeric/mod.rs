@@ -1,5 +1,6 @@
 //! Elementary functions with the same bits on every machine: sums and products in a fixed order, no fused operations.
 
+pub mod dense;
 mod table;
 
 /// Above this argument e^x is infinite in double precision, below the second it is zero.

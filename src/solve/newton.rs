@@ -1,12 +1,14 @@
 //! Newton's method on the junction voltages, with a limit on each junction's step; source and conductance stepping.
 
 use super::junction::{Device, Law};
-use super::linear::solve_small;
 use super::plan::{Plan, Scratch, Slot};
 use super::{Attempt, Failure, Solution};
 use crate::circuit::Node;
 use crate::device::transistor;
+use crate::numeric::dense;
 
+/// A pivot below this means that the linearised network has no unique solution.
+const LEAST_PIVOT: f64 = 1e-300;
 /// Current residual at a node, as a share of the largest current into it, above which a solution does not count.
 pub(super) const CURRENT_RESIDUAL: f64 = 1e-9;
 /// Current residual (A) that always counts as nothing.
@@ -252,7 +254,7 @@ impl Plan {
                 line[partner] += by_current[j] * slopes[2 * j + 1];
             }
         }
-        solve_small(jacobian, small)?;
+        dense::solve(jacobian, small, LEAST_PIVOT).map_err(|dense::Singular| Failure::Singular)?;
         step[n..n + m].copy_from_slice(small);
         for (j, &partner) in self.partners.iter().enumerate() {
             step[n + m + j] = slopes[2 * j] * small[j] + slopes[2 * j + 1] * small[partner];
