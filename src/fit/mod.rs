@@ -4,7 +4,7 @@
 //! end of an axis reaches the row's limit or lies outside it.
 
 mod diode;
-mod simulate;
+pub mod simulate;
 mod transistor;
 
 use serde::{Deserialize, Serialize};

@@ -21,6 +21,8 @@ use crate::part::{Part, Row, RowQuantity};
 const EARLY_VOLTAGE: f64 = 100.0;
 const REVERSE_GAIN: f64 = 3.0;
 const GAIN_EXPONENT: f64 = 1.5;
+/// No specimen is taken to have less reverse gain than this.
+const LEAST_REVERSE_GAIN: f64 = 0.02;
 /// Ten kelvin double the cut-off current (common practice).
 const CUTOFF_E_FOLD: f64 = 10.0 / std::f64::consts::LN_2;
 const ENERGY_GAP: f64 = 1.12;
@@ -573,25 +575,12 @@ fn saturation_axis(part: &Part, law: &mut TransistorLaw, errors: &mut Diagnostic
     }
 }
 
-/// The reverse gain at which a row's V_CE(sat) reaches `wanted`, no less than a fiftieth.
+/// The reverse gain, from [`LEAST_REVERSE_GAIN`] to the device's own, at which a row's V_CE(sat) comes nearest to `wanted`.
 fn reverse_gain_for(transistor: &Transistor, row: &Row, wanted: f64) -> f64 {
-    let reaches = |log_gain: f64| {
-        let tried = Transistor { gain_reverse: libm::exp(log_gain), ..*transistor };
-        forced(&tried, row).is_some_and(|at| at.v_ce >= wanted)
-    };
-    let (mut low, mut high) = (libm::log(0.02), libm::log(transistor.gain_reverse));
-    if reaches(high) || low >= high {
-        return transistor.gain_reverse;
-    }
-    for _ in 0..20 {
-        let middle = (low + high) / 2.0;
-        if reaches(middle) {
-            low = middle;
-        } else {
-            high = middle;
-        }
-    }
-    libm::exp(low)
+    let own = transistor.gain_reverse;
+    let (Some(i_c), Some(i_b)) = (row.at.i_c, row.at.i_b) else { return own };
+    let found = simulate::reverse_gain_at(transistor, row.at.t_j, i_c, i_b, wanted);
+    found.map_or(own, |gain| gain.max(LEAST_REVERSE_GAIN).min(own))
 }
 
 fn leakage_axis(part: &Part) -> SpreadAxis {

@@ -1,5 +1,8 @@
 //! Fits: the demonstration records reach every limit of their sheets on the unsafe side; contradictions are refused.
 
+mod bias;
+mod timing;
+
 use qsheaf::fit::{self, Bound, Law};
 use qsheaf::part::{self, Part};
 use qsheaf::source::File;
