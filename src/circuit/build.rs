@@ -5,7 +5,7 @@ use std::collections::BTreeMap;
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::formula::Formula;
 use crate::part::PartKind;
-use crate::quantity::{Dimension, Kind};
+use crate::quantity::{Dimension, Kind, Role, parse_ageing};
 use crate::source::Place;
 use crate::worksheet::{Record, Spot, source_of};
 
@@ -274,10 +274,18 @@ impl Builder<'_> {
             None => {}
         }
         let source = field(record, "source").map(|text| source_of(text, &[], &mut self.diagnostics));
+        let role = field(record, "spread").map(|text| Role::parse(&text.value, &text.place));
+        let ageing = field(record, "ageing").map(|text| (text, parse_ageing(&text.value, &text.place)));
+        let role = role.and_then(|role| self.diagnostics.keep(role));
+        let drift = ageing.and_then(|(text, drift)| self.diagnostics.keep(drift).map(|drift| (text, drift)));
+        let (inputs_before, aged_at) =
+            (self.inputs.len(), drift.as_ref().map(|(text, _)| text.place.clone()));
         let mut reader = Reader {
             basis: self.basis,
             source,
             about: element.about.clone(),
+            role,
+            ageing: drift.map(|(_, drift)| drift),
             inputs: &mut self.inputs,
             diagnostics: &mut self.diagnostics,
         };
@@ -286,6 +294,14 @@ impl Builder<'_> {
             read_main(&mut reader, text, rule, wanted, &mut element);
         }
         read_further(&mut reader, record, rule, &mut element);
+        if let Some(place) = aged_at
+            && !self.inputs[inputs_before..].iter().any(|input| input.ageing.is_some())
+        {
+            let message = format!("`{}` has no value of its own that could age", record.key.value);
+            self.diagnostics.push(Diagnostic::error(&place, message).expected(
+                "ageing with a value written in place; that of a basis value stands with it: `R_x: 1 kΩ ± 1 %, ageing ± 2 %`",
+            ));
+        }
         let wrong =
             self.diagnostics.0[before..].iter().any(|d| d.severity == crate::diagnostic::Severity::Error);
         (!wrong).then_some(element)

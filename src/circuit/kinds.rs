@@ -27,7 +27,7 @@ pub(super) struct KindRule {
 }
 
 /// Keys that every record may have.
-pub(super) const COMMON_KEYS: [&str; 2] = ["source", "about"];
+pub(super) const COMMON_KEYS: [&str; 4] = ["source", "about", "spread", "ageing"];
 
 const TWO_ENDS: &[&str] = &["from", "to"];
 const POLES: &[&str] = &["plus", "minus"];

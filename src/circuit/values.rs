@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::formula::{Expr, Formula};
-use crate::quantity::{self, Dimension, Kind, Quantity, Source, Sourced, Spread};
+use crate::quantity::{self, Dimension, Kind, Quantity, Role, Source, Sourced, Spread};
 use crate::worksheet::{Spot, quantity_as};
 
 /// A value written with an element: an input named like its designator (`R1`) or after what it is (`DS1.R_cold`).
@@ -13,6 +13,10 @@ pub struct InPlace {
     pub symbol: String,
     pub sourced: Sourced,
     pub description: Option<String>,
+    /// How it varies within its limits, where the record says so.
+    pub role: Option<Role>,
+    /// How far it drifts with age, as a share of its value; a main value only.
+    pub ageing: Option<Quantity>,
 }
 
 /// What the ratings of a filament say.
@@ -29,6 +33,9 @@ pub(super) struct Reader<'a> {
     /// Where the values of this record come from.
     pub source: Option<Source>,
     pub about: Option<String>,
+    pub role: Option<Role>,
+    /// Drift with age of the main value.
+    pub ageing: Option<Quantity>,
     pub inputs: &'a mut Vec<InPlace>,
     pub diagnostics: &'a mut Diagnostics,
 }
@@ -172,6 +179,9 @@ impl Reader<'_> {
             symbol: symbol.to_owned(),
             sourced: Sourced { quantity, source: self.source.clone(), place: text.place.clone() },
             description: self.about.clone(),
+            role: self.role,
+            // A symbol with a point is a further value of the element.
+            ageing: self.ageing.clone().filter(|_| !symbol.contains('.')),
         });
         Formula {
             expr: Expr::Name { name: symbol.to_owned(), place: text.place.clone() },

@@ -81,7 +81,10 @@ fn verified(findings: &Findings) -> Verified {
         judged.push(Judged {
             sort: "criterion",
             label: found.label.clone(),
-            text: found.text.clone(),
+            text: match &found.coverage {
+                Some(coverage) => format!("{} over coverage {}", found.text, coverage.asked),
+                None => found.text.clone(),
+            },
             condition: found.worst.condition.clone(),
             thermal: found.worst.thermal.clone(),
             clause: found.clause.clone(),

@@ -6,7 +6,7 @@ pub use read::read;
 
 use serde::{Deserialize, Serialize};
 
-use crate::quantity::{Dimension, Kind, Source};
+use crate::quantity::{Dimension, Kind, Role, Source};
 use crate::source::{Digest, Place};
 
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug, Serialize, Deserialize)]
@@ -33,6 +33,9 @@ pub struct Part {
     pub ratings: Vec<Rating>,
     /// Thermal impedance of single pulses.
     pub pulses: Vec<Pulse>,
+    /// How specimens lie within their limits, where the record says so.
+    #[serde(default)]
+    pub spread: Option<Role>,
     /// Record file and its digest.
     pub digest: Digest,
     pub place: Place,
@@ -79,6 +82,9 @@ pub enum RowQuantity {
     /// Relative tolerance of a resistor, capacitor or coil family.
     #[serde(rename = "tolerance")]
     Tolerance,
+    /// Drift of the value of a resistor, capacitor or coil family with age, as a share of it; apart from its tolerance.
+    #[serde(rename = "ageing")]
+    Ageing,
     #[serde(rename = "R_cold")]
     ColdResistance,
     #[serde(rename = "R")]
@@ -188,7 +194,7 @@ impl PartKind {
 }
 
 impl RowQuantity {
-    pub const ALL: [RowQuantity; 20] = [
+    pub const ALL: [RowQuantity; 21] = [
         RowQuantity::CurrentGain,
         RowQuantity::BaseEmitterVoltage,
         RowQuantity::BaseEmitterSaturation,
@@ -203,6 +209,7 @@ impl RowQuantity {
         RowQuantity::BaseEmitterTemperatureCoefficient,
         RowQuantity::ResistanceCoefficient,
         RowQuantity::Tolerance,
+        RowQuantity::Ageing,
         RowQuantity::ColdResistance,
         RowQuantity::Resistance,
         RowQuantity::Inductance,
@@ -228,6 +235,7 @@ impl RowQuantity {
             RowQuantity::BaseEmitterTemperatureCoefficient => "TC_VBE",
             RowQuantity::ResistanceCoefficient => "TCR",
             RowQuantity::Tolerance => "tolerance",
+            RowQuantity::Ageing => "ageing",
             RowQuantity::ColdResistance => "R_cold",
             RowQuantity::Resistance => "R",
             RowQuantity::Inductance => "L",
@@ -241,7 +249,7 @@ impl RowQuantity {
         const PER_KELVIN: Dimension = Dimension([0, 0, 0, 0, -2]);
         const VOLT_PER_KELVIN: Dimension = Dimension([4, 2, -6, -2, -2]);
         match self {
-            RowQuantity::CurrentGain | RowQuantity::Tolerance => Dimension::NONE,
+            RowQuantity::CurrentGain | RowQuantity::Tolerance | RowQuantity::Ageing => Dimension::NONE,
             RowQuantity::BaseEmitterVoltage
             | RowQuantity::BaseEmitterSaturation
             | RowQuantity::CollectorEmitterSaturation
@@ -346,6 +354,17 @@ impl RatingQuantity {
 impl Part {
     pub fn rating(&self, quantity: RatingQuantity) -> Option<&Rating> {
         self.ratings.iter().find(|rating| rating.quantity == quantity)
+    }
+
+    /// How far values drift with age, down and up, as a share of them.
+    pub fn ageing(&self) -> Option<(f64, f64, &Row)> {
+        let row = self.rows_of(RowQuantity::Ageing).next()?;
+        let (low, high) = match (row.min, row.max) {
+            (Some(min), Some(max)) => (min.min(0.0), max.max(0.0)),
+            (Some(one), None) | (None, Some(one)) => (-one.abs(), one.abs()),
+            (None, None) => return None,
+        };
+        Some((low, high, row))
     }
 
     pub fn rows_of(&self, quantity: RowQuantity) -> impl Iterator<Item = &Row> {

@@ -5,6 +5,7 @@
 //!   kind: npn
 //!   about: NPN switching transistor
 //!   source: data sheet LBN-250 rev C          # of every row that names no other; `page` is added
+//!   spread: normal                            # how specimens lie within their limits; uniform where nothing is said
 //!   rows:
 //!     - {h_FE: {min: 100, typ: 180, max: 300}, I_C: 150 mA, V_CE: 1 V, page: 2}
 //!     - {V_CE(sat): {max: 0.4 V}, I_C: 150 mA, I_B: 15 mA, page: 3}
@@ -14,14 +15,14 @@
 //! ```
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
-use crate::quantity::{self, Dimension, Kind, Quantity, Source};
+use crate::quantity::{self, Dimension, Kind, Quantity, Role, Source};
 use crate::source::{Digest, File, Place};
 use crate::worksheet::{Spot, source_of};
 use crate::yaml::{self, Key, Node, Value};
 
 use super::{Part, PartKind, Pulse, Rating, RatingQuantity, Row, RowQuantity, TestCondition};
 
-const KEYS: [&str; 6] = ["kind", "about", "source", "rows", "ratings", "pulses"];
+const KEYS: [&str; 7] = ["kind", "about", "source", "spread", "rows", "ratings", "pulses"];
 const KINDS: [(&str, PartKind); 8] = [
     ("npn", PartKind::Npn),
     ("pnp", PartKind::Pnp),
@@ -90,6 +91,10 @@ fn record(key: &Key, node: &Node, file: &File, errors: &mut Diagnostics) -> Opti
         rows: Vec::new(),
         ratings: Vec::new(),
         pulses: Vec::new(),
+        spread: node.get("spread").and_then(|node| {
+            let text = errors.keep(node.scalar("uniform, triangular, normal or bias"))?;
+            errors.keep(Role::parse(text.trim(), &node.place))
+        }),
         digest: Digest::of(&file.bytes),
         place: key.place.clone(),
     };
@@ -205,11 +210,16 @@ fn belongs(quantity: RowQuantity, part: PartKind) -> bool {
                 | Q::ZenerTemperatureCoefficient
         ),
         PartKind::Resistor | PartKind::Capacitor => {
-            matches!(quantity, Q::ResistanceCoefficient | Q::Tolerance)
+            matches!(quantity, Q::ResistanceCoefficient | Q::Tolerance | Q::Ageing)
         }
         PartKind::Filament | PartKind::Coil => matches!(
             quantity,
-            Q::Resistance | Q::ColdResistance | Q::Inductance | Q::ResistanceCoefficient | Q::Tolerance
+            Q::Resistance
+                | Q::ColdResistance
+                | Q::Inductance
+                | Q::ResistanceCoefficient
+                | Q::Tolerance
+                | Q::Ageing
         ),
     }
 }
@@ -284,6 +294,11 @@ fn columns(node: &Node, quantity: RowQuantity, errors: &mut Diagnostics) -> Opti
             };
             (column("min")?, column("typ")?, column("max")?)
         }
+        _ if quantity == RowQuantity::Ageing => {
+            let text = errors.keep(node.scalar("a share of the value: `± 2 %`"))?;
+            let drift = errors.keep(quantity::parse_ageing(text, &node.place))?.spread;
+            (Some(drift.low), None, Some(drift.high))
+        }
         _ => {
             let read = measured(node, kind, "`{min: ..., typ: ..., max: ...}`", errors)?;
             if read.bounded {
@@ -312,6 +327,7 @@ fn columns(node: &Node, quantity: RowQuantity, errors: &mut Diagnostics) -> Opti
         RowQuantity::BaseEmitterTemperatureCoefficient
             | RowQuantity::ZenerTemperatureCoefficient
             | RowQuantity::ResistanceCoefficient
+            | RowQuantity::Ageing
     );
     if !signed && [min, typ, max].into_iter().flatten().any(|value| value <= 0.0) {
         errors.push(error("a value is not above zero").expected("magnitudes, for NPN and PNP alike"));

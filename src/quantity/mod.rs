@@ -11,6 +11,7 @@ mod parse;
 mod print;
 mod source;
 mod unit;
+mod variation;
 
 pub use dimension::Dimension;
 pub(crate) use parse::{number_length, spaced_celsius};
@@ -18,6 +19,7 @@ pub use parse::{parse, parse_as};
 pub use print::{Printed, digits_apart, print, significant, text};
 pub use source::parse_source;
 pub use unit::{parse_unit, preferred_unit};
+pub use variation::{Distribution, LIMITS_AT, Role, parse_ageing};
 
 use serde::{Deserialize, Serialize};
 

@@ -72,6 +72,10 @@ impl Unit {
         Unit { symbol: String::new(), kind: Kind::NONE, factor: 1.0, offset: 0.0 }
     }
 
+    pub fn percent() -> Unit {
+        Unit { symbol: "%".to_owned(), kind: Kind::NONE, factor: 1e-2, offset: 0.0 }
+    }
+
     /// The degree Celsius on the temperature scale.
     pub fn celsius() -> Unit {
         Unit { symbol: "°C".to_owned(), kind: Kind::TEMPERATURE, factor: 1.0, offset: CELSIUS }

@@ -61,7 +61,9 @@ pub(super) fn facts(findings: &Findings) -> Vec<Fact> {
         let clause = criterion.clause.as_ref().map(|clause| format!(" [{clause}]")).unwrap_or_default();
         let safety = if criterion.safety { ", safety" } else { "" };
         let within = criterion.conditions.join(", ");
-        let text = format!("{} over {} in {within}{safety}{clause}", criterion.text, criterion.over);
+        let reason = criterion.coverage.as_ref().map(|found| format!(" because \"{}\"", found.because));
+        let over = format!("{}{}", criterion.over, reason.unwrap_or_default());
+        let text = format!("{} over {over} in {within}{safety}{clause}", criterion.text);
         out.push(Fact::new(format!("criterion {}", criterion.label), text));
     }
     tell_apart(out)
@@ -90,6 +92,7 @@ fn input(input: &Input) -> Fact {
             input.text.clone(),
             format!("{} [{source}]", input.text),
             format!("{low} to {high}, nominal {nominal}"),
+            input.role.text(),
         ],
     }
 }
@@ -102,9 +105,12 @@ fn part(part: &Part, out: &mut Vec<Fact>) {
     }
 }
 
-/// Every row, rating and pulse of a record: name with its test condition, value as text, source.
+/// How a part's specimens lie within their limits, and every row, rating and pulse of a record: name with its test condition, value as text, source.
 pub fn part_lines(part: &Part) -> Vec<(String, String, &str)> {
     let mut out = Vec::new();
+    if let Some(role) = part.spread {
+        out.push(("spread".to_owned(), role.text(), "the record"));
+    }
     for row in &part.rows {
         let kind = Kind::of(row.quantity.dimension());
         let all: Vec<f64> = [row.min, row.typ, row.max].into_iter().flatten().collect();

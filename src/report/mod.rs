@@ -103,6 +103,7 @@ fn context(findings: &Findings, issue: &Issue, page: &Value) -> Value {
             "body": !findings.body.is_empty(),
             "points": !findings.points.is_empty(),
             "results": !findings.results.is_empty(),
+            "spreads": !findings.spreads.is_empty(),
             "stress": !findings.stress.is_empty(),
             "fits": !findings.models.is_empty(),
             "trace": !findings.trace.is_empty(),

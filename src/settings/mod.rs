@@ -8,7 +8,8 @@ use crate::yaml;
 /// The file that makes a folder a notebook.
 pub const FILE: &str = "notebook.yaml";
 
-const KEYS: [&str; 7] = ["organisation", "numbering", "paper", "language", "logo", "policy", "defaults"];
+const KEYS: [&str; 8] =
+    ["organisation", "numbering", "paper", "language", "logo", "policy", "root-sum-square", "defaults"];
 const PAPERS: [&str; 2] = ["a4", "us-letter"];
 
 /// What `notebook.yaml` says.
@@ -25,6 +26,8 @@ pub struct Settings {
     pub logo: Option<Spot<String>>,
     /// Path of the derating policy inside the notebook.
     pub policy: Option<Spot<String>>,
+    /// Every criterion over extremes is combined by root-sum-square as well, and shown beside the extreme value.
+    pub root_sum_square: bool,
     /// Values that every note has unless its basis gives them anew: ambient temperature, supplies.
     pub defaults: Vec<BasisEntry>,
 }
@@ -55,6 +58,7 @@ pub fn read(file: &File) -> Result<Settings, Diagnostics> {
     let paper = text_of("paper", "`a4` or `us-letter`");
     let language = text_of("language", "a language tag such as `en`");
     let logo = text_of("logo", "the path of an image inside the notebook");
+    let root_sum_square = text_of("root-sum-square", "`yes` or `no`");
     let policy = text_of("policy", "the path of a derating policy inside the notebook");
     if organisation.is_none() && !errors.has_errors() {
         errors
@@ -80,6 +84,13 @@ pub fn read(file: &File) -> Result<Settings, Diagnostics> {
                 .expected("`en`, `en-GB`"),
         );
     }
+    if let Some(word) = root_sum_square.as_ref().filter(|word| !["yes", "no"].contains(&word.value.as_str()))
+    {
+        let message = format!("`{}` is neither yes nor no", word.value);
+        errors.push(Diagnostic::error(&word.place, message).expected(
+            "`yes` where every criterion over extremes shall be combined by root-sum-square as well, else `no`",
+        ));
+    }
     let defaults = defaults(&root, &mut errors);
     if errors.has_errors() {
         return Err(errors);
@@ -94,6 +105,7 @@ pub fn read(file: &File) -> Result<Settings, Diagnostics> {
         language: or(language, "en"),
         logo,
         policy,
+        root_sum_square: root_sum_square.is_some_and(|word| word.value == "yes"),
         defaults,
     })
 }
@@ -106,9 +118,9 @@ fn defaults(root: &yaml::Node, errors: &mut Diagnostics) -> Vec<BasisEntry> {
     for (key, value) in entries {
         let Some(text) = errors.keep(value.scalar(example)) else { continue };
         let spot = Spot { value: text.trim().to_owned(), place: value.place.clone() };
-        let Some((sourced, description)) = basis_text(&spot, &[], errors) else { continue };
+        let Some(value) = basis_text(&spot, &[], errors) else { continue };
         let name = Spot { value: key.name.clone(), place: key.place.clone() };
-        found.push(BasisEntry { name, sourced, description, block: 0 });
+        found.push(value.named(name, 0));
     }
     found
 }

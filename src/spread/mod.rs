@@ -1,4 +1,4 @@
-//! Extreme value, over any [`Response`].
+//! Extreme value, root-sum-square and Monte Carlo, over any [`Response`].
 //!
 //! Worst-case practice (ECSS-Q-HB-30-01A) asks for the lowest and highest value of a result over everything that varies.
 //! [`extremes`] finds both for all outputs of a response at once and says how each was established:
@@ -12,15 +12,31 @@
 //! * [`Method::Searched`]: starts from the signs of all sensitivities and from the best points seen for any output; axes and
 //!   pairs of axes flipped, each axis scanned inside and refined, ridges followed, other hills climbed, until nothing moves.
 //!   This is no proof.
+//!
+//! [`combine`] and [`sample`] split what varies into [`Role`]s: bias-like axes stand at their worst end, random ones count as
+//! standard deviations or are drawn. Extreme value decides; the other two stand beside it, and Monte Carlo decides only where
+//! a note asks for a coverage and says why.
 
+mod chance;
 mod climb;
+mod combine;
+mod confidence;
 mod evaluate;
 mod line;
+mod sample;
 mod search;
 mod starts;
 
 use serde::{Deserialize, Serialize};
 
+pub use crate::quantity::{Distribution, Role};
+pub use chance::philox;
+pub use combine::{Combine, Combined, LINEAR_WITHIN, Term, combine};
+pub use confidence::{
+    Proportion, Quantile, coverage_factor, coverage_interval, incomplete_beta, proportion, quantile, rank,
+    samples_to_decide,
+};
+pub use sample::{Sampling, Specimen, sample, specimen};
 pub use search::extremes;
 
 /// Why a response has no value at a point.

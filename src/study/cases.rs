@@ -1,11 +1,11 @@
 //! The conditions of a note, each cold and in thermal equilibrium, searched for extremes.
 
 use super::compile::Compiled;
-use super::response::{Disturbance, InCondition};
+use super::response::{Disturbance, InCondition, Moves};
 use crate::circuit::ElementKind;
 use crate::fit::{Bound, Law, Model};
 use crate::part::RatingQuantity;
-use crate::quantity::{Quantity, Spread};
+use crate::quantity::{Quantity, Role, Spread};
 use crate::solve::{Branch, Region, Thermal};
 use crate::spread::{self, Options, Range, Response};
 use crate::worksheet::{Condition, ElementState};
@@ -54,30 +54,37 @@ pub(super) fn search<'a>(compiled: &'a Compiled<'a>, conditions: &[Stated<'_>]) 
     }
     let options: Vec<Options> =
         cases.iter().map(|case| wanted(compiled, &conditions[case.condition])).collect();
-    let next = std::sync::atomic::AtomicUsize::new(0);
-    let slots: Vec<std::sync::Mutex<Vec<Range>>> = cases.iter().map(|_| Default::default()).collect();
-    let work = || {
-        loop {
-            let i = next.fetch_add(1, std::sync::atomic::Ordering::Relaxed);
-            let (Some(case), Some(options), Some(slot)) = (cases.get(i), options.get(i), slots.get(i)) else {
-                return;
-            };
-            let found = spread::extremes(&case.response, options);
-            *slot.lock().unwrap_or_else(std::sync::PoisonError::into_inner) = found;
-        }
-    };
-    std::thread::scope(|scope| {
-        scope.spawn(work);
-        work();
-    });
-    let found: Vec<Vec<Range>> = slots
-        .into_iter()
-        .map(|slot| slot.into_inner().unwrap_or_else(std::sync::PoisonError::into_inner))
-        .collect();
+    let pairs: Vec<(&Case<'_>, &Options)> = cases.iter().zip(&options).collect();
+    let found = on_two_threads(&pairs, |(case, options)| spread::extremes(&case.response, options));
     for (case, ranges) in cases.iter_mut().zip(found) {
         case.ranges = ranges;
     }
     cases
+}
+
+/// What `work` makes of each item, in their order, on two threads.
+pub(super) fn on_two_threads<I: Sync, T: Send + Default>(
+    items: &[I],
+    work: impl Fn(&I) -> T + Sync,
+) -> Vec<T> {
+    let next = std::sync::atomic::AtomicUsize::new(0);
+    let slots: Vec<std::sync::Mutex<T>> = items.iter().map(|_| Default::default()).collect();
+    let take = || {
+        loop {
+            let i = next.fetch_add(1, std::sync::atomic::Ordering::Relaxed);
+            let (Some(item), Some(slot)) = (items.get(i), slots.get(i)) else { return };
+            let found = work(item);
+            *slot.lock().unwrap_or_else(std::sync::PoisonError::into_inner) = found;
+        }
+    };
+    std::thread::scope(|scope| {
+        scope.spawn(take);
+        take();
+    });
+    slots
+        .into_iter()
+        .map(|slot| slot.into_inner().unwrap_or_else(std::sync::PoisonError::into_inner))
+        .collect()
 }
 
 /// The ends that this condition needs: margins downward where the criterion or demand applies, results both ways.
@@ -264,6 +271,21 @@ impl Case<'_> {
         }
     }
 
+    /// How each axis varies. What a condition states of an input belongs to the condition, like a bias.
+    pub fn roles(&self, compiled: &Compiled<'_>, condition: &Stated<'_>) -> Vec<Role> {
+        let stated = |symbol: &str| {
+            condition.written.is_some_and(|w| w.overrides.iter().any(|(name, _)| name.value == symbol))
+        };
+        let role = |moves: &Moves| match *moves {
+            Moves::Input(input) if stated(&compiled.inputs[input].symbol) => Role::Bias,
+            Moves::Input(input) => compiled.inputs[input].role,
+            Moves::Device(element, _) => {
+                compiled.part_of(element).and_then(|part| part.spread).unwrap_or(Role::UNIFORM)
+            }
+        };
+        self.response.moves().iter().map(role).collect()
+    }
+
     /// The inputs that matter at a corner: name and printed level.
     pub fn corner(&self, compiled: &Compiled<'_>, at: &[f64], matters: &[usize]) -> Vec<(String, String)> {
         let axes = self.response.axes();
@@ -273,10 +295,8 @@ impl Case<'_> {
                 let record = axes.get(axis)?;
                 let value = *at.get(axis)?;
                 let level = match self.response.moves()[axis] {
-                    super::response::Moves::Input(input) => {
-                        crate::quantity::text(value, &compiled.inputs[input].unit, 3)
-                    }
-                    super::response::Moves::Device(..) => device_level(value),
+                    Moves::Input(input) => crate::quantity::text(value, &compiled.inputs[input].unit, 3),
+                    Moves::Device(..) => device_level(value),
                 };
                 Some((record.name.clone(), level))
             })

@@ -3,7 +3,7 @@
 use std::collections::BTreeMap;
 
 use super::findings::Input;
-use super::material::Material;
+use super::material::{Material, aged};
 use super::names::{Names, check_order, check_uses, diagnostics_of, kind_of};
 use super::response::{ElementTapes, Field, Reading, Space};
 use crate::circuit::{Element, ElementKind};
@@ -130,6 +130,7 @@ pub(super) fn compile(material: &Material) -> Result<Compiled<'_>, Diagnostics> 
         laws: material.network.elements.iter().map(|element| material.law_of(element)).collect(),
         tapes: element_tapes,
         inputs: inputs.iter().map(|input| (input.symbol.clone(), input.spread)).collect(),
+        ages: ages(&inputs),
         ambient,
         signal: material.network.elements.iter().position(|element| element.kind == ElementKind::Signal),
         wants_midband,
@@ -469,6 +470,7 @@ fn element_tapes(
     for element in &material.network.elements {
         let part = element.part.as_deref().and_then(|name| material.parts.get(name));
         let (coefficient, coefficient_bound) = coefficients(element, part);
+        let own_input = inputs.iter().position(|input| input.symbol == element.designator);
         all.push(ElementTapes {
             value: tape(&element.value),
             resistance: tape(&element.resistance),
@@ -481,10 +483,22 @@ fn element_tapes(
             coefficient,
             coefficient_bound,
             tcr: tape(&element.tcr),
-            own_input: inputs.iter().position(|input| input.symbol == element.designator),
+            own_input,
+            ageing: inputs
+                .iter()
+                .position(|input| aged(&input.symbol) == Some(&element.designator))
+                .filter(|_| own_input.is_none()),
         });
     }
     all
+}
+
+/// Inputs that drift with age, each with its drift.
+fn ages(inputs: &[Input]) -> Vec<(usize, usize)> {
+    let drifts = inputs.iter().enumerate().filter_map(|(drift, input)| Some((aged(&input.symbol)?, drift)));
+    drifts
+        .filter_map(|(name, drift)| Some((inputs.iter().position(|input| input.symbol == name)?, drift)))
+        .collect()
 }
 
 /// The temperature coefficient that every specimen has, and the bound of what may go either way (1/K).

@@ -7,8 +7,9 @@ use crate::diagnostic::Diagnostics;
 use crate::fit::Model;
 use crate::markup::{Flow, Math};
 use crate::part::Part;
-use crate::quantity::{Kind, Shown, Source, Spread, Unit};
+use crate::quantity::{Kind, Role, Shown, Source, Spread, Unit};
 use crate::source::{Digest, Place};
+use crate::spread::{Proportion, Quantile};
 use crate::stress::StressLine;
 
 /// Version of this shape; a register keeps it with every issue.
@@ -31,6 +32,9 @@ pub struct Findings {
     pub results: Vec<ResultFinding>,
     pub derivation: Vec<Step>,
     pub criteria: Vec<CriterionFinding>,
+    /// Criteria by several methods, where the note or the notebook asks for that.
+    #[serde(default)]
+    pub spreads: Vec<SpreadFinding>,
     pub stress: Vec<StressLine>,
     pub cautions: Vec<Caution>,
     pub figures: Vec<FigureFinding>,
@@ -77,6 +81,9 @@ pub struct Input {
     pub bounded: bool,
     /// Where it comes from; `None` counts as an assumption.
     pub source: Option<Source>,
+    /// How it varies within its limits.
+    #[serde(default)]
+    pub role: Role,
     pub place: Place,
 }
 
@@ -140,6 +147,8 @@ pub enum Established {
     Vertices,
     Monotone,
     Searched,
+    /// The specimen that bounds the share asked for, among those drawn.
+    Sampled,
     /// Nothing varies: the nominal value is the only one.
     Exact,
 }
@@ -201,9 +210,86 @@ pub struct CriterionFinding {
     pub margin: Shown,
     pub nominal: Shown,
     pub verdict: Verdict,
+    /// A share of specimens decided, not the extreme value.
+    #[serde(default)]
+    pub coverage: Option<CoverageFinding>,
     /// Region changes between corners, non-monotone axes.
     pub flags: Vec<String>,
     pub place: Place,
+}
+
+/// What a verdict by coverage says, so that it is never taken for one by extreme value.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct CoverageFinding {
+    /// The share asked for, as written: `99 %`.
+    pub asked: String,
+    /// Why not every specimen must satisfy the criterion, in the author's words.
+    pub because: String,
+    /// What was found, in a sentence, the extreme value beside it.
+    pub statement: String,
+}
+
+/// The margin of one criterion by up to three methods.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct SpreadFinding {
+    /// Label of the criterion.
+    pub criterion: String,
+    /// Unit of the margin.
+    pub unit: Unit,
+    pub condition: String,
+    /// `cold start` or `equilibrium`.
+    pub thermal: String,
+    /// Bias-like inputs and where they stand.
+    pub held: Vec<(String, String)>,
+    pub nominal: Shown,
+    /// Extreme value, worst over all cases of the criterion.
+    pub extreme: Shown,
+    pub combined: CombinedFinding,
+    pub sampled: Option<SampledFinding>,
+    /// What each input can do to the margin, greatest first.
+    pub terms: Vec<TermFinding>,
+}
+
+/// Root-sum-square (SI units of the margin).
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct CombinedFinding {
+    /// Nominal, biases and the coverage factor times the deviation; or why that says nothing.
+    pub end: Shown,
+    pub bias: f64,
+    pub deviation: f64,
+    pub coverage_factor: f64,
+    /// Greatest departure from the straight line, as a share of the change from nominal to end.
+    pub departure: f64,
+}
+
+/// Monte Carlo.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct SampledFinding {
+    pub samples: u64,
+    pub seed: u64,
+    /// Samples that satisfy the criterion, clear of the numerical error, and samples without a value.
+    pub passed: u64,
+    pub missing: u64,
+    /// Share of specimens that satisfy it, with its limits at `confidence`.
+    pub passing: Proportion,
+    pub confidence: f64,
+    /// Share asked for, and the margin that so many specimens keep, with its sampling error.
+    pub coverage: f64,
+    pub margin: Option<Quantile>,
+    /// The interval that covers the share of what is judged, with the sampling error of each end, and its unit.
+    pub interval: Option<[Quantile; 2]>,
+    pub unit: Unit,
+}
+
+/// What one input can do to a margin.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct TermFinding {
+    pub symbol: String,
+    pub role: Role,
+    /// Change of the margin for the half-width of the input (SI unit of the margin).
+    pub reach: f64,
+    /// Change of the margin where the bias stands, or for one standard deviation.
+    pub effect: f64,
 }
 
 /// One line of the derivation: symbols, numbers, result.

@@ -5,7 +5,7 @@ use std::collections::BTreeMap;
 
 use super::cases::{self, Case, Gap, Stated};
 use super::compile::{Compiled, judged_by};
-use super::findings::{CriterionFinding, End, Established, ResultFinding, Verdict};
+use super::findings::{CriterionFinding, End, Established, ResultFinding, SpreadFinding, Verdict};
 use super::response::Moves;
 use crate::fit::Bound;
 use crate::quantity::{Kind, Origin, Shown, Unit};
@@ -131,7 +131,7 @@ impl<'a> Judge<'a> {
     }
 
     /// The rows to get, where missing one would move the margin by more than its share (or turn a violation).
-    fn leans_on_gaps(&self, found: &Found, margin: usize) -> Option<String> {
+    pub fn leans_on_gaps(&self, found: &Found, margin: usize) -> Option<String> {
         let mut wanted: Vec<String> = Vec::new();
         for (gap, outputs) in self.missed(found).iter() {
             let matters = match outputs.get(margin) {
@@ -148,7 +148,7 @@ impl<'a> Judge<'a> {
     }
 
     /// How many bounds that are assumptions or from memory a margin leans on at a point.
-    fn weak_bounds(&self, found: &Found, margin: usize) -> usize {
+    pub fn weak_bounds(&self, found: &Found, margin: usize) -> usize {
         let case = &self.cases[found.case];
         let mut count = 0;
         for (i, moves) in case.response.moves().iter().enumerate() {
@@ -381,27 +381,32 @@ pub(super) fn reason(miss: Miss, condition: &str, thermal: &str) -> String {
 }
 
 /// Which conditions a criterion must hold in.
-fn wanted<'j>(conditions: &'j [Stated<'j>], line: &'j CriterionLine) -> impl Fn(usize) -> bool + 'j {
+pub(super) fn wanted<'j>(
+    conditions: &'j [Stated<'j>],
+    line: &'j CriterionLine,
+) -> impl Fn(usize) -> bool + 'j {
     move |index| {
         line.conditions.is_empty() || line.conditions.iter().any(|c| c.value == conditions[index].name)
     }
 }
 
-/// All criteria of the note, judged.
-pub(super) fn criteria(judge: &Judge<'_>) -> Vec<CriterionFinding> {
+/// All criteria of the note, judged; and those by several methods of which that was asked.
+pub(super) fn criteria(judge: &Judge<'_>) -> (Vec<CriterionFinding>, Vec<SpreadFinding>) {
     let lines = &judge.compiled.material.worksheet.acceptance;
-    lines
-        .iter()
-        .zip(&judge.compiled.criteria)
-        .map(|(line, outputs)| criterion(judge, line, outputs))
-        .collect()
+    let mut spreads = Vec::new();
+    let criteria = lines.iter().zip(&judge.compiled.criteria).map(|(line, outputs)| {
+        let (mut finding, ruling) = criterion(judge, line, outputs);
+        spreads.extend(super::odds::beside(judge, line, outputs, &ruling, &mut finding));
+        finding
+    });
+    (criteria.collect(), spreads)
 }
 
 fn criterion(
     judge: &Judge<'_>,
     line: &CriterionLine,
     outputs: &super::compile::CriterionOutputs,
-) -> CriterionFinding {
+) -> (CriterionFinding, Ruling) {
     let compiled = judge.compiled;
     let holds_in = wanted(judge.conditions, line);
     let size = |found: &Found| {
@@ -447,7 +452,7 @@ fn criterion(
     if matches!(line.what, CriterionKind::State { .. }) {
         flags.extend(judge.region_changes(&holds_in));
     }
-    CriterionFinding {
+    let finding = CriterionFinding {
         label: line.label.value.clone(),
         text: line.text.clone(),
         math,
@@ -469,10 +474,12 @@ fn criterion(
             Ok(found) => Shown::Value(found.value),
             Err(reason) => Shown::NotShown(reason),
         },
-        verdict: ruling.verdict,
+        verdict: ruling.verdict.clone(),
+        coverage: None,
         flags,
         place: line.place.clone(),
-    }
+    };
+    (finding, ruling)
 }
 
 pub(super) fn unit_of(compiled: &Compiled<'_>, kind: Kind, values: [Option<f64>; 2]) -> Unit {

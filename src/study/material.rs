@@ -3,13 +3,13 @@
 use std::collections::{BTreeMap, BTreeSet};
 
 use super::findings::Input;
-use crate::circuit::{self, Element, Network};
+use crate::circuit::{self, Element, ElementKind, Network};
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::fit::{self, Law, Model};
 use crate::part::{self, Part, PartKind};
-use crate::quantity::{Origin, Source};
+use crate::quantity::{Kind, Origin, Quantity, Role, Source, Spread, Unit};
 use crate::settings::{self, Settings};
-use crate::source::{Bundle, Digest};
+use crate::source::{Bundle, Digest, Place};
 use crate::stress::policy::{self, Policy};
 use crate::worksheet::{self, Worksheet};
 
@@ -91,13 +91,14 @@ impl Material {
         }
         warnings.extend(built.warnings);
         let used: BTreeSet<&str> = built.network.elements.iter().filter_map(|e| e.part.as_deref()).collect();
-        let parts = parts.iter().filter(|(name, _)| used.contains(name.as_str()));
+        let all_parts = parts;
+        let parts = all_parts.iter().filter(|(name, _)| used.contains(name.as_str()));
         Ok(Material {
             parts: parts.map(|(name, part)| (name.clone(), part.clone())).collect(),
             settings,
             worksheet,
             models,
-            in_place: built.inputs.into_iter().map(|value| in_place(value, &built.network)).collect(),
+            in_place: in_place_values(built.inputs, &built.network, &all_parts),
             network: built.network,
             policy,
             warnings,
@@ -112,7 +113,7 @@ impl Material {
         let defaults = self.settings.defaults.iter().filter(|entry| !given(&entry.name.value));
         let entries = defaults.chain(&self.worksheet.basis).map(|entry| {
             let quantity = &entry.sourced.quantity;
-            Input {
+            let value = Input {
                 symbol: entry.name.value.clone(),
                 description: entry.description.clone(),
                 spread: quantity.spread,
@@ -121,10 +122,15 @@ impl Material {
                 text: quantity.text.clone(),
                 bounded: quantity.bounded,
                 source: entry.sourced.source.clone(),
+                role: entry.role,
                 place: entry.sourced.place.clone(),
-            }
+            };
+            let drift = entry.ageing.clone();
+            let drift = drift.map(|drift| ageing(&value.symbol, &value.place, drift, value.source.clone()));
+            (value, drift)
         });
-        entries.chain(self.in_place.iter().cloned()).collect()
+        let (values, drifts): (Vec<Input>, Vec<Option<Input>>) = entries.unzip();
+        values.into_iter().chain(self.in_place.iter().cloned()).chain(drifts.into_iter().flatten()).collect()
     }
 
     /// The fitted law of an element, if it is a junction device.
@@ -137,9 +143,84 @@ impl Material {
     }
 }
 
+/// Values written in place, and behind them the drift with age of every element that has one: as written with it, or as the
+/// record of its part says.
+fn in_place_values(
+    values: Vec<circuit::InPlace>,
+    network: &Network,
+    parts: &BTreeMap<String, Part>,
+) -> Vec<Input> {
+    let mut drifts = Vec::new();
+    for element in &network.elements {
+        let own = values.iter().find(|value| value.symbol == element.designator);
+        let record = element.part.as_deref().and_then(|name| parts.get(name));
+        let of = |drift: Quantity, source: Option<Source>| {
+            ageing(&element.designator, &element.place, drift, source)
+        };
+        match (
+            own.and_then(|own| own.ageing.clone().map(|drift| (drift, own))),
+            record.and_then(Part::ageing),
+        ) {
+            (Some((drift, own)), _) => drifts.push(of(drift, own.sourced.source.clone())),
+            (None, Some((low, high, row))) => {
+                let unit = Unit::percent();
+                let text = [low, high].map(|end| crate::quantity::text(end, &unit, 3)).join(" to ");
+                let spread = Spread { low, nominal: 0.0, high };
+                let drift = Quantity { spread, kind: Kind::NONE, unit, bounded: true, text };
+                drifts.push(of(drift, Some(row.source.clone())));
+            }
+            (None, None) => {}
+        }
+    }
+    values.into_iter().map(|value| in_place(value, network, parts)).chain(drifts).collect()
+}
+
+/// What the name of a drift with age ends with; no formula can be written with a blank in a name.
+const AGEING: &str = " ageing";
+
+/// The symbol of the value that an input makes drift, if it is a drift.
+pub(super) fn aged(symbol: &str) -> Option<&str> {
+    symbol.strip_suffix(AGEING)
+}
+
+/// The drift of a value: an input of its own, never summed with its tolerance.
+fn ageing(of: &str, place: &Place, drift: Quantity, source: Option<Source>) -> Input {
+    Input {
+        symbol: format!("{of}{AGEING}"),
+        description: Some("drift with age, as a share of the value".to_owned()),
+        spread: drift.spread,
+        kind: drift.kind,
+        unit: drift.unit,
+        text: drift.text,
+        bounded: true,
+        source,
+        role: Role::Bias,
+        place: place.clone(),
+    }
+}
+
+/// How a value written in place varies: as its record or that of its part says; else a resistor, capacitor or inductor by
+/// purchase tolerance, anything else (source, load, thermal resistance, temperature coefficient) like a bias.
+fn role(value: &circuit::InPlace, network: &Network, parts: &BTreeMap<String, Part>) -> Role {
+    let owner = value.symbol.split('.').next().unwrap_or("");
+    let element = network.elements.iter().find(|element| element.designator == owner);
+    let bought = matches!(
+        element.map(|element| element.kind),
+        Some(ElementKind::Resistor | ElementKind::Capacitor | ElementKind::Inductor)
+    );
+    let own = value.symbol == owner || value.symbol.ends_with(".R_w");
+    let of_part = element.and_then(|e| e.part.as_deref()).and_then(|name| parts.get(name)?.spread);
+    match value.role {
+        Some(role) => role,
+        None if own && bought => of_part.unwrap_or(Role::UNIFORM),
+        None => Role::Bias,
+    }
+}
+
 /// A value written in place. Where it names no source but its element names a part, the designer chose the value and the
 /// part's order fixes the tolerance; without either it counts as an assumption.
-fn in_place(value: circuit::InPlace, network: &Network) -> Input {
+fn in_place(value: circuit::InPlace, network: &Network, parts: &BTreeMap<String, Part>) -> Input {
+    let role = role(&value, network, parts);
     let quantity = value.sourced.quantity;
     let part = network.elements.iter().find(|e| e.designator == value.symbol).and_then(|e| e.part.as_deref());
     let chosen = part.filter(|_| quantity.bounded).map(|part| Source {
@@ -155,6 +236,7 @@ fn in_place(value: circuit::InPlace, network: &Network) -> Input {
         text: quantity.text,
         bounded: quantity.bounded,
         source: value.sourced.source.or(chosen),
+        role,
         place: value.sourced.place,
     }
 }

@@ -6,6 +6,7 @@
 //! compile    -> symbols with dimensions and slots; tapes; what is observed
 //! cases      -> every condition, cold and in equilibrium, as a Response, searched for extremes
 //! judge      -> criteria and tabulated results; stressed -> stress lines, cautions
+//! odds       -> root-sum-square and Monte Carlo beside a criterion, where they are asked for
 //! points     -> operating points, steps of the derivation; series -> figures; prose -> recalls
 //! ```
 
@@ -15,6 +16,7 @@ mod findings;
 mod judge;
 mod material;
 mod names;
+mod odds;
 mod points;
 mod prose;
 mod response;
@@ -39,7 +41,7 @@ pub fn study(bundle: &Bundle, path: &str) -> Result<Findings, Diagnostics> {
     let cases = cases::search(&compiled, &conditions);
     let judge = judge::Judge::new(&compiled, &cases, &conditions);
     let mut diagnostics = material.warnings.clone();
-    let criteria = judge::criteria(&judge);
+    let (criteria, spreads) = judge::criteria(&judge);
     let results = judge::results(&judge);
     let stress = stressed::lines(&judge);
     let cautions = stressed::cautions(&judge, &criteria, &stress);
@@ -83,7 +85,8 @@ pub fn study(bundle: &Bundle, path: &str) -> Result<Findings, Diagnostics> {
         figures,
         models: material.models.values().cloned().collect(),
         parts: material.parts.values().cloned().collect(),
-        validity: validity(&material),
+        validity: validity(&material, !spreads.is_empty()),
+        spreads,
         warnings: diagnostics,
         files: material.files.clone(),
         digest: material.digest,
@@ -155,7 +158,7 @@ fn trace(material: &material::Material, criteria: &[CriterionFinding]) -> Vec<(S
 }
 
 /// Limits of validity of the models used, one sentence each.
-fn validity(material: &material::Material) -> Vec<String> {
+fn validity(material: &material::Material, statistical: bool) -> Vec<String> {
     let mut sentences = vec![
         "Direct-current operating points and midband behaviour only: nothing is said about switching times, oscillation or \
          noise."
@@ -176,6 +179,14 @@ fn validity(material: &material::Material) -> Vec<String> {
         sentences.push(
             "A filament or coil has its stated resistance, hot or cold as the condition says; it does not warm up in the \
              model."
+                .to_owned(),
+        );
+    }
+    if statistical {
+        sentences.push(
+            "Root-sum-square and Monte Carlo take specimens as independent of each other and, where nothing else is declared, \
+             as uniformly distributed between their limits (JCGM 100:2008, 4.3.7); a temperature coefficient of unknown sign \
+             goes with the tolerance of its specimen. A lot that lies near one limit as a whole is not covered."
                 .to_owned(),
         );
     }

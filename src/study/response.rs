@@ -74,6 +74,8 @@ pub(super) struct ElementTapes {
     pub tcr: Option<Tape>,
     /// The input whose tolerance the element carries, for the sign of the coefficient bound.
     pub own_input: Option<usize>,
+    /// The input by whose share a value over the basis drifts with age; an input of the element's own drifts itself.
+    pub ageing: Option<usize>,
 }
 
 /// What all conditions of a note share.
@@ -84,6 +86,8 @@ pub(super) struct Space<'a> {
     pub tapes: Vec<ElementTapes>,
     /// Nominal inputs and their spreads, by slot.
     pub inputs: Vec<(String, Spread)>,
+    /// Inputs that drift with age, each with the input that says by which share.
+    pub ages: Vec<(usize, usize)>,
     /// Which input is the ambient temperature.
     pub ambient: usize,
     pub readings: Vec<Reading>,
@@ -322,6 +326,9 @@ impl<'a> InCondition<'a> {
                 Moves::Device(element, axis) => work.coordinates[element][axis] = *value,
             }
         }
+        for &(value, drift) in &self.space.ages {
+            work.slots[value] *= 1.0 + work.slots[drift];
+        }
         let ambient = work.slots[self.space.ambient];
         for element in 0..self.space.network.elements.len() {
             work.branches[element] = self.branch(element, &work.slots, &work.coordinates[element], ambient);
@@ -361,7 +368,8 @@ impl<'a> InCondition<'a> {
             (ElementKind::Resistor | ElementKind::Filament | ElementKind::Coil, _) => {
                 let cold = self.states[element] == Some(ElementState::Cold);
                 let tape = if cold { &tapes.cold } else { &tapes.value };
-                Branch::Resistor { ohms: number(tape, f64::NAN) * self.drift(tapes, slots, ambient) }
+                let aged = tapes.ageing.map_or(1.0, |drift| 1.0 + slots[drift]);
+                Branch::Resistor { ohms: number(tape, f64::NAN) * aged * self.drift(tapes, slots, ambient) }
             }
             (ElementKind::Capacitor, _) => Branch::Capacitor,
             (ElementKind::Inductor, _) => Branch::Inductor { ohms: number(&tapes.resistance, 0.0) },
@@ -390,12 +398,16 @@ impl<'a> InCondition<'a> {
         let rise = ambient - STATED_AT;
         let side = tapes.own_input.map_or(0.0, |input| {
             let spread = &self.inputs[input];
-            let half = if slots[input] < spread.nominal {
+            // As bought: what it drifted with age says nothing about the specimen.
+            let drift =
+                self.space.ages.iter().find(|(value, _)| *value == input).map(|(_, drift)| slots[*drift]);
+            let bought = slots[input] / (1.0 + drift.unwrap_or(0.0));
+            let half = if bought < spread.nominal {
                 spread.nominal - spread.low
             } else {
                 spread.high - spread.nominal
             };
-            if half > 0.0 { ((slots[input] - spread.nominal) / half).clamp(-1.0, 1.0) } else { 0.0 }
+            if half > 0.0 { ((bought - spread.nominal) / half).clamp(-1.0, 1.0) } else { 0.0 }
         });
         let coefficient = tapes.tcr.as_ref().map_or(tapes.coefficient, |tape| tape.eval(slots));
         1.0 + coefficient * rise + tapes.coefficient_bound * rise.abs() * side

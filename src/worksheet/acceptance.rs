@@ -1,4 +1,7 @@
 //! `acceptance` blocks: `label: relation or state [over extremes] [in condition, ...] [safety] [clause]`.
+//!
+//! Instead of extremes a share of specimens may be asked for, with the reason in quotes:
+//! `over coverage 99 % because "trimmed in test"`, `over coverage 99.7 % from 20000 samples because "..."`.
 
 use std::ops::Range;
 
@@ -7,7 +10,11 @@ use crate::diagnostic::{Diagnostic, Diagnostics};
 use super::fence::RawBlock;
 use super::lines::{self, Line};
 use super::page::Page;
-use super::{CriterionKind, CriterionLine, Over, Region, Spot, enough};
+use super::{Coverage, CriterionKind, CriterionLine, Over, Region, Spot, enough};
+
+mod coverage;
+
+use coverage::Reason;
 
 const EXAMPLE: &str = "cool: Q1.T_j <= 125 °C over extremes in on [LB-1 3.6]";
 const REGIONS: [(&str, Region); 4] = [
@@ -61,8 +68,9 @@ fn read_line(
     block: usize,
     diagnostics: &mut Diagnostics,
 ) -> Option<CriterionLine> {
-    let (rest, clause) = split_clause(line, rest, diagnostics)?;
-    let text = line.text.get(rest.clone()).unwrap_or("");
+    let (reason, text) = coverage::cut_reason(line, rest.clone(), diagnostics)?;
+    let (rest, clause) = split_clause(line, rest, &text, diagnostics)?;
+    let text = text.get(..rest.len()).unwrap_or("");
     let words = lines::words(text);
     let first_of_tail = words.iter().position(|word| {
         let word_text = text.get(word.clone()).unwrap_or("");
@@ -73,15 +81,16 @@ fn read_line(
     let body = line.trimmed(rest.start..rest.start + body_end);
     let tail: Vec<Spot<String>> =
         tail.iter().map(|word| line.spot(rest.start + word.start..rest.start + word.end)).collect();
-    let tail = read_tail(&tail, diagnostics);
+    let tail = read_tail(&tail, reason, diagnostics);
     let what = read_what(line, body.clone(), diagnostics);
-    let (over, conditions, safety) = tail?;
+    let Tail { over, coverage, conditions, safety } = tail?;
     Some(CriterionLine {
         place: label.place.clone(),
         label,
         what: what?,
         text: line.text.get(body).unwrap_or("").to_owned(),
         over,
+        coverage,
         conditions,
         clause,
         safety,
@@ -89,13 +98,13 @@ fn read_line(
     })
 }
 
-/// Splits `[clause]` off the end.
+/// Splits `[clause]` off the end. `text` is what stands at `rest`, a reason in quotes blanked.
 fn split_clause(
     line: &Line,
     rest: Range<usize>,
+    text: &str,
     diagnostics: &mut Diagnostics,
 ) -> Option<(Range<usize>, Option<Spot<String>>)> {
-    let text = line.text.get(rest.clone()).unwrap_or("");
     if !text.ends_with(']') {
         if let Some(at) = text.find('[') {
             let place = line.place(rest.start + at..rest.start + at + 1);
@@ -122,17 +131,29 @@ fn split_clause(
     Some((line.trimmed(rest.start..rest.start + open), Some(line.spot(clause))))
 }
 
-fn read_tail(
-    words: &[Spot<String>],
-    diagnostics: &mut Diagnostics,
-) -> Option<(Over, Vec<Spot<String>>, bool)> {
+/// What stands behind the demand.
+struct Tail {
+    over: Over,
+    coverage: Option<Coverage>,
+    conditions: Vec<Spot<String>>,
+    safety: bool,
+}
+
+fn read_tail(words: &[Spot<String>], reason: Option<Reason>, diagnostics: &mut Diagnostics) -> Option<Tail> {
     let (mut over, mut conditions, mut safety) = (None, Vec::new(), false);
+    let (mut coverage, mut reason) = (None, reason);
     let mut right = true;
     let mut at = 0;
     while let Some(word) = words.get(at) {
         at += 1;
         match word.value.as_str() {
             "safety" => safety = true,
+            "over" if over.is_none() && words.get(at).is_some_and(|word| word.value == "coverage") => {
+                // Extremes are searched all the same: they stand beside the share.
+                over = Some(Over::Extremes);
+                coverage = coverage::read(words, &mut at, reason.take(), diagnostics);
+                right &= coverage.is_some();
+            }
             "over" => {
                 let (next, wanted) = match words.get(at) {
                     Some(next) if next.value == "nominal" => (next, Some(Over::Nominal)),
@@ -146,8 +167,8 @@ fn read_tail(
                     let message = format!("`{}` does not say over what the criterion holds", next.value);
                     diagnostics.push(
                         Diagnostic::error(&next.place, message)
-                            .expected("`over extremes` or `over nominal`, once")
-                            .nearest(&next.value, ["extremes", "nominal"]),
+                            .expected("`over extremes`, `over nominal` or `over coverage 99 % because \"...\"`, once")
+                            .nearest(&next.value, ["extremes", "nominal", "coverage"]),
                     );
                 }
                 over = wanted;
@@ -177,7 +198,14 @@ fn read_tail(
             }
         }
     }
-    right.then_some((over.unwrap_or(Over::Extremes), conditions, safety))
+    if let Some(reason) = reason {
+        right = false;
+        diagnostics.push(
+            Diagnostic::error(&reason.place, "this reason belongs to nothing")
+                .expected(format!("it behind a coverage: `{}`", coverage::EXAMPLE)),
+        );
+    }
+    right.then_some(Tail { over: over.unwrap_or(Over::Extremes), coverage, conditions, safety })
 }
 
 fn read_what(line: &Line, body: Range<usize>, diagnostics: &mut Diagnostics) -> Option<CriterionKind> {

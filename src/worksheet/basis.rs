@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 use std::ops::Range;
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
-use crate::quantity::{self, Kind, Origin, Quantity, Source, Sourced};
+use crate::quantity::{self, Kind, Origin, Quantity, Role, Source, Sourced};
 use crate::source::Place;
 use crate::yaml::{self, Key, Node, Value};
 
@@ -12,7 +12,7 @@ use super::fence::RawBlock;
 use super::page::Page;
 use super::{BasisEntry, Spot, enough, lines};
 
-const KEYS: [&str; 3] = ["value", "source", "about"];
+const KEYS: [&str; 5] = ["value", "source", "about", "spread", "ageing"];
 const EXAMPLE: &str = "`V_bat: 10.8 to 14.8 V, usually 12.6 V [battery sheet rev 3 p. 4]`";
 
 pub(super) fn read(
@@ -39,9 +39,9 @@ pub(super) fn read(
         } else {
             names.insert(name.value.clone(), name.place.clone());
         }
-        let Some((sourced, description)) = entry(page, value, clauses, diagnostics) else { continue };
+        let Some(value) = entry(page, value, clauses, diagnostics) else { continue };
         if named {
-            out.push(BasisEntry { name, sourced, description, block: block.index });
+            out.push(value.named(name, block.index));
         }
     }
 }
@@ -96,12 +96,22 @@ pub(super) fn refuse_loose_words(entries: &[(Key, Node)], diagnostics: &mut Diag
     loose
 }
 
-fn entry(
-    page: &Page,
-    node: &Node,
-    clauses: &[&str],
-    diagnostics: &mut Diagnostics,
-) -> Option<(Sourced, Option<String>)> {
+/// What stands behind the name of a basis value.
+pub struct BasisValue {
+    pub sourced: Sourced,
+    pub description: Option<String>,
+    pub role: Role,
+    pub ageing: Option<Quantity>,
+}
+
+impl BasisValue {
+    pub fn named(self, name: Spot<String>, block: usize) -> BasisEntry {
+        let BasisValue { sourced, description, role, ageing } = self;
+        BasisEntry { name, sourced, description, role, ageing, block }
+    }
+}
+
+fn entry(page: &Page, node: &Node, clauses: &[&str], diagnostics: &mut Diagnostics) -> Option<BasisValue> {
     let Value::Map(entries) = &node.value else {
         return basis_text(&scalar(page, node, EXAMPLE, diagnostics)?, clauses, diagnostics);
     };
@@ -129,26 +139,61 @@ fn entry(
         Some(about) => Some(scalar(page, about, "what the value is, in words", diagnostics)?.value),
         None => None,
     };
-    Some((Sourced { quantity, source, place: value.place }, about))
+    let mut further = |key: &str, what: &str| {
+        node.get(key).map(|found| scalar(page, found, what, diagnostics).ok_or(())).transpose()
+    };
+    let role = further("spread", "bias, uniform, triangular or normal").ok()?;
+    let ageing = further("ageing", "a share of the value: `± 2 %`").ok()?;
+    let role = role.map(|text| Role::parse(&text.value, &text.place));
+    let ageing = ageing.map(|text| quantity::parse_ageing(&text.value, &text.place));
+    Some(BasisValue {
+        sourced: Sourced { quantity, source, place: value.place },
+        description: about,
+        role: role.map_or(Some(Role::Bias), |role| diagnostics.keep(role))?,
+        ageing: match ageing {
+            Some(ageing) => Some(diagnostics.keep(ageing)?),
+            None => None,
+        },
+    })
 }
 
-/// Reads the text of a basis value, `quantity -- what it is [where it comes from]`: the quantity with its source, and what
-/// it is.
+/// Reads the text of a basis value, `quantity, ageing ± 1 % -- what it is [where it comes from]`: the quantity with its
+/// source, what it is, and how far it drifts.
 pub fn basis_text(
     text: &Spot<String>,
     clauses: &[&str],
     diagnostics: &mut Diagnostics,
-) -> Option<(Sourced, Option<String>)> {
+) -> Option<BasisValue> {
     let parts = split(text, diagnostics)?;
     let part = |range: &Range<usize>| Spot {
         value: text.value.get(range.clone()).unwrap_or("").to_owned(),
         place: text.place.within(&text.value, range.start, range.end),
     };
-    let value = part(&parts.value);
+    let (value, ageing) = split_ageing(part(&parts.value));
     let quantity = diagnostics.keep(quantity::parse(&value.value, &value.place))?;
+    let ageing = match ageing {
+        Some(text) => Some(diagnostics.keep(quantity::parse_ageing(&text.value, &text.place))?),
+        None => None,
+    };
     let source = parts.source.as_ref().map(|range| source_of(&part(range), clauses, diagnostics));
     let description = parts.about.as_ref().map(|range| part(range).value);
-    Some((Sourced { quantity, source, place: value.place }, description))
+    let sourced = Sourced { quantity, source, place: value.place };
+    Some(BasisValue { sourced, description, role: Role::Bias, ageing })
+}
+
+/// Cuts `2.5 V ± 1 %, ageing ± 0.2 %` before the word.
+fn split_ageing(text: Spot<String>) -> (Spot<String>, Option<Spot<String>>) {
+    const WORD: &str = " ageing ";
+    let whole = text.value.as_str();
+    let Some(at) = whole.find(WORD) else { return (text, None) };
+    let cut = |from: usize, part: &str| Spot {
+        value: part.to_owned(),
+        place: text.place.within(whole, from, from + part.len()),
+    };
+    let value = whole.get(..at).unwrap_or("").trim_end_matches([',', ' ']);
+    let from = at + WORD.len();
+    let drift = whole.get(from..).unwrap_or("");
+    (cut(0, value), Some(cut(from, drift)))
 }
 
 /// Byte ranges of the parts of a value text.

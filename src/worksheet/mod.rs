@@ -16,7 +16,7 @@ mod read;
 pub mod recall;
 mod records;
 
-pub use basis::{basis_text, quantity_as, source_of};
+pub use basis::{BasisValue, basis_text, quantity_as, source_of};
 pub use fence::WORDS;
 pub use flow::flow;
 pub use head::is_date;
@@ -25,7 +25,7 @@ pub use read::read;
 use crate::diagnostic::Diagnostics;
 use crate::formula::{Formula, Relation};
 use crate::markup::{Align, Math};
-use crate::quantity::{Quantity, Sourced};
+use crate::quantity::{Quantity, Role, Sourced};
 use crate::source::{Digest, Place};
 
 /// Reading a worksheet stops where so many things are wrong with it: it is probably no worksheet at all.
@@ -157,6 +157,10 @@ pub struct BasisEntry {
     pub sourced: Sourced,
     /// `for` text, if the entry has one.
     pub description: Option<String>,
+    /// How it varies within its limits; a value of the basis is bias-like where nothing else is said.
+    pub role: Role,
+    /// How far it drifts with age, as a share of its value.
+    pub ageing: Option<Quantity>,
     /// Index of the basis block.
     pub block: usize,
 }
@@ -214,6 +218,8 @@ pub struct CriterionLine {
     pub what: CriterionKind,
     pub text: String,
     pub over: Over,
+    /// `over coverage ...`: a share of specimens decides, not the extreme value (which still stands beside it).
+    pub coverage: Option<Coverage>,
     /// Conditions it must hold in; empty: in all.
     pub conditions: Vec<Spot<String>>,
     pub clause: Option<Spot<String>>,
@@ -221,6 +227,20 @@ pub struct CriterionLine {
     pub safety: bool,
     pub place: Place,
     pub block: usize,
+}
+
+/// `over coverage 99.7 % from 20000 samples because "trimmed in test"`
+#[derive(Clone, PartialEq, Debug)]
+pub struct Coverage {
+    /// Share of specimens that must satisfy the criterion, between a half and 0.9999.
+    pub share: f64,
+    /// The share as written.
+    pub text: String,
+    /// How many specimens are drawn, where the worksheet says so.
+    pub samples: Option<usize>,
+    /// Why not every specimen must satisfy it.
+    pub because: String,
+    pub place: Place,
 }
 
 /// There are few of these; a box would only stand in the way of matching.

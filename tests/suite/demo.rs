@@ -90,6 +90,26 @@ fn the_lamp_switch_agrees_with_a_hand_calculation() {
     assert!((nominal("k") - nominal("I_C") / nominal("I_B")).abs() < 1e-9);
 }
 
+/// The one criterion by coverage: met by the share asked for though not at the extremes, and told as such.
+#[test]
+fn the_microphone_stage_is_judged_by_coverage_where_it_says_why() {
+    let found = findings("microphone-stage.md");
+    let criterion = found.criteria.iter().find(|criterion| criterion.label == "few trimmed").unwrap();
+    assert_eq!(criterion.verdict, Verdict::Met);
+    assert!(criterion.coverage.as_ref().unwrap().statement.contains("not by extreme value"));
+    let [spread] = found.spreads.as_slice() else { panic!() };
+    assert!(spread.extreme.value().unwrap() < 0.0 && criterion.margin.value().unwrap() > 0.0);
+    let of = |symbol: &str| spread.terms.iter().find(|term| term.symbol == symbol).unwrap();
+    // The gain is about R3 / (R4 + r_e): a hundredth of R3 is a hundredth of the gain; half of that with age.
+    let gain = spread.nominal.value().unwrap() + 10.4;
+    assert!((of("R3").reach.abs() / (0.01 * gain) - 1.0).abs() < 0.05, "{:?}", of("R3"));
+    assert!((of("R3 ageing").reach.abs() / (0.005 * gain) - 1.0).abs() < 0.05, "{:?}", of("R3 ageing"));
+    assert!(spread.held.iter().any(|(symbol, level)| symbol == "R3 ageing" && level.starts_with('−')));
+    for sheet in ["lamp-switch.md", "horn-relay.md"] {
+        assert!(findings(sheet).spreads.is_empty(), "{sheet} asks for nothing of the kind");
+    }
+}
+
 #[test]
 fn every_note_typesets_to_the_same_bytes_twice() {
     for sheet in SHEETS {

@@ -1,6 +1,7 @@
 //! Extremes over a declared space: stages with known answers, random responses against dense grids, cost.
 
 mod cost;
+mod odds;
 mod random;
 mod stages;
 

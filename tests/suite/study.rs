@@ -1,5 +1,7 @@
 //! Studies of small notes: what is refused and where, and what each verdict rests on.
 
+mod odds;
+
 use qsheaf::source::{Bundle, File};
 use qsheaf::study::{Findings, Verdict, study};
 

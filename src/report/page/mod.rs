@@ -2,6 +2,7 @@
 //! compute nothing.
 
 mod body;
+mod spreads;
 mod summary;
 mod tables;
 
@@ -79,6 +80,7 @@ pub(crate) fn page(
         "figures": findings.figures.iter().zip(drawings).enumerate().map(drawing).collect::<Vec<_>>(),
         "points": tables::points(findings),
         "tolerance": tables::tolerance(findings),
+        "spreads": spreads::spreads(findings),
         "stress": tables::stress(findings),
         "fits": tables::fits(findings),
         "trace": tables::trace(findings),

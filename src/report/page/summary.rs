@@ -74,6 +74,15 @@ pub(super) fn verdict(verdict: &Verdict) -> (u8, &'static str, String) {
     }
 }
 
+/// As [`verdict`] of a criterion; one by coverage says so.
+pub(super) fn judged(finding: &CriterionFinding) -> (u8, &'static str, String) {
+    let (rank, key, words) = verdict(&finding.verdict);
+    match &finding.coverage {
+        Some(coverage) => (rank, key, format!("{words} at {} coverage", coverage.asked)),
+        None => (rank, key, words),
+    }
+}
+
 /// Criteria in the order of the page.
 pub(super) fn ordered(findings: &Findings) -> Vec<&CriterionFinding> {
     let mut all: Vec<&CriterionFinding> = findings.criteria.iter().collect();
@@ -91,7 +100,7 @@ pub(super) fn criteria(findings: &Findings) -> Vec<Value> {
 }
 
 fn criterion(finding: &CriterionFinding, limit: Value, worst: Value, margin: Value) -> Value {
-    let (_, key, words) = verdict(&finding.verdict);
+    let (_, key, words) = judged(finding);
     let reason = match &finding.verdict {
         Verdict::NotShown { reason } => Some(rich(reason)),
         _ => None,
@@ -114,6 +123,9 @@ fn criterion(finding: &CriterionFinding, limit: Value, worst: Value, margin: Val
         "spoken": spoken(finding),
         "clause": finding.clause,
         "safety": finding.safety,
+        "coverage": finding.coverage.as_ref().map(|coverage| {
+            json!({"statement": rich(&coverage.statement), "because": rich(&coverage.because)})
+        }),
         "limit": limit,
         "worst": worst,
         "margin": margin,
@@ -143,6 +155,7 @@ pub(super) fn established(how: Established) -> &'static str {
         Established::Vertices => "all corners",
         Established::Monotone => "monotone, verified",
         Established::Searched => "searched",
+        Established::Sampled => "bounding specimen of those drawn",
         Established::Exact => "nothing varies",
     }
 }

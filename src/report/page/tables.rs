@@ -12,16 +12,22 @@ use crate::stress::StressLine;
 use crate::study::{Findings, Input, OperatingFinding, ResultFinding, Verdict};
 
 use super::super::cell::{self, DIGITS, Number};
-use super::summary::{established, is_wide, ordered, spoken, verdict};
+use super::summary::{established, is_wide, judged, ordered, spoken, verdict};
 use super::{corner, plain, rich, shown, symbol};
 
 /// Design basis: groups of inputs, each with its source and a mark where the source is weak.
 pub(super) fn basis(findings: &Findings) -> Value {
     let designators: Vec<&str> = findings.elements.iter().map(|e| e.designator.as_str()).collect();
-    let mut groups: [(&str, Vec<&Input>); 3] =
-        [("Values of the design basis", vec![]), ("Values of elements", vec![]), ("Spread of parts", vec![])];
+    let mut groups: [(&str, Vec<&Input>); 4] = [
+        ("Values of the design basis", vec![]),
+        ("Values of elements", vec![]),
+        ("Spread of parts", vec![]),
+        ("Drift with age", vec![]),
+    ];
     for input in &findings.inputs {
-        let group = if input.symbol.contains(' ') {
+        let group = if input.symbol.ends_with(" ageing") {
+            3
+        } else if input.symbol.contains(' ') {
             2
         } else if designators.contains(&input.symbol.as_str()) {
             1
@@ -124,7 +130,7 @@ pub(super) fn circuit(findings: &Findings) -> Value {
 
 pub(super) fn acceptance(findings: &Findings) -> Value {
     let row = |criterion: &crate::study::CriterionFinding| {
-        let (_, key, words) = verdict(&criterion.verdict);
+        let (_, key, words) = judged(criterion);
         json!({
             "label": criterion.label,
             "math": criterion.math,
@@ -351,7 +357,7 @@ fn bound(bound: &crate::fit::Bound) -> Value {
 fn row_kind(quantity: RowQuantity) -> Kind {
     use RowQuantity as Q;
     let dimension = match quantity {
-        Q::CurrentGain | Q::Tolerance => Dimension::NONE,
+        Q::CurrentGain | Q::Tolerance | Q::Ageing => Dimension::NONE,
         Q::BaseEmitterVoltage
         | Q::BaseEmitterSaturation
         | Q::CollectorEmitterSaturation
@@ -377,7 +383,7 @@ pub(super) fn trace(findings: &Findings) -> Value {
     let mut all: Vec<&(String, String, Vec<String>)> = findings.trace.iter().collect();
     all.sort_by_key(|(_, _, labels)| !labels.is_empty());
     let verdicts: BTreeMap<&str, (u8, &str, String)> =
-        ordered(findings).iter().map(|c| (c.label.as_str(), verdict(&c.verdict))).collect();
+        ordered(findings).iter().map(|c| (c.label.as_str(), judged(c))).collect();
     let row = |(clause, text, labels): &&(String, String, Vec<String>)| {
         let answers: Vec<Value> = labels
             .iter()

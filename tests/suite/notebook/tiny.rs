@@ -144,6 +144,7 @@ pub fn study(program: &str, bundle: &Bundle, path: &str) -> Result<Findings, Dia
                 text: entry.sourced.quantity.text.clone(),
                 bounded: false,
                 source: entry.sourced.source.clone(),
+                role: entry.role,
                 place: entry.sourced.place.clone(),
             })
             .collect(),
@@ -157,6 +158,7 @@ pub fn study(program: &str, bundle: &Bundle, path: &str) -> Result<Findings, Dia
         elements: vec![],
         points: vec![],
         derivation: vec![],
+        spreads: vec![],
         stress: vec![],
         cautions: vec![],
         figures: vec![],
@@ -222,6 +224,7 @@ pub fn criterion(label: &str, worst: f64, limit: f64, verdict: Verdict) -> Crite
         margin: Shown::Value(limit - worst),
         nominal: Shown::Value(worst),
         verdict,
+        coverage: None,
         flags: vec![],
         place: Place::new(&"a.md".into(), 1, 1, 0),
     }

@@ -6,10 +6,11 @@ use qsheaf::diagnostic::{Diagnostic, Diagnostics};
 use qsheaf::fit::{Bound, DiodeLaw, Law, Model, Residual, SpreadAxis};
 use qsheaf::markup::{Align, Flow, Inline, Math};
 use qsheaf::part::{Part, PartKind, RatingQuantity, RowQuantity};
-use qsheaf::quantity::{Dimension, Kind, Origin, Shown, Source, Spread, Unit};
+use qsheaf::quantity::{Dimension, Distribution, Kind, Origin, Role, Shown, Source, Spread, Unit};
 use qsheaf::redline::{FileMove, InputMove, Moves, ResultMove, VerdictMove};
 use qsheaf::report::{Issue, Status};
 use qsheaf::source::{Bundle, Digest, File, Place};
+use qsheaf::spread::{Proportion, Quantile};
 use qsheaf::stress::StressLine;
 use qsheaf::study::*;
 
@@ -98,6 +99,7 @@ fn input(
         bounded: true,
         unit,
         source: from,
+        role: Default::default(),
         place: place(12),
     }
 }
@@ -259,6 +261,7 @@ fn criterion(w: Wanted) -> CriterionFinding {
         nominal: not_shown.unwrap_or(Shown::Value(si(w.worst * 0.9))),
         unit,
         verdict: w.verdict,
+        coverage: None,
         flags: w.flags.iter().map(|f| f.to_string()).collect(),
         place: place(60),
     }
@@ -954,6 +957,7 @@ pub fn findings() -> Findings {
         results: results(),
         derivation: derivation(),
         criteria: criteria(),
+        spreads: vec![spread()],
         stress: stress(),
         cautions: vec![
             Caution { hazard: "burn".into(), title: "Hot surface".into(), why: "DS1 dissipates up to 1.8 W; its glass passes 60 °C at T_a = 50 °C.".into(), measure: "Guard the lamp, let it cool before service.".into(), basis: "EN ISO 13732-1, bare metal, contact of 1 s".into() },
@@ -985,7 +989,7 @@ pub fn findings() -> Findings {
         }],
         parts: vec![Part {
             name: "LBN-250".into(), kind: PartKind::Npn, description: "NPN switching transistor, invented for this notebook".into(),
-            rows: vec![], ratings: vec![], pulses: vec![], digest: Digest::of(b"part"), place: place(1),
+            rows: vec![], ratings: vec![], pulses: vec![], spread: None, digest: Digest::of(b"part"), place: place(1),
         }],
         validity: vec![
             "Junction temperatures between −40 and 150 °C.".into(),
@@ -1000,6 +1004,51 @@ pub fn findings() -> Findings {
             ("lantern/bench.svg".into(), Digest::of(b"bench")),
         ],
         digest: Digest::of(b"all"),
+    }
+}
+
+/// A criterion by three methods, one of which says nothing.
+fn spread() -> SpreadFinding {
+    let quantile = |value: f64| Quantile { value, low: Some(value - 0.01), high: None };
+    let term = |symbol: &str, role, reach: f64| TermFinding {
+        symbol: symbol.into(),
+        role,
+        reach,
+        effect: reach / 2.0,
+    };
+    SpreadFinding {
+        criterion: "saturated".into(),
+        unit: unit("V"),
+        condition: "on".into(),
+        thermal: "cold start".into(),
+        held: pairs(&[("V_bat", "10.8 V"), ("T_a", "-20 °C")]),
+        nominal: Shown::Value(0.4),
+        extreme: Shown::Value(-0.02),
+        combined: CombinedFinding {
+            end: Shown::NotShown("not linear: use Monte Carlo or extreme value".into()),
+            bias: -0.1,
+            deviation: 0.05,
+            coverage_factor: 2.326,
+            departure: 0.4,
+        },
+        sampled: Some(SampledFinding {
+            samples: 10_000,
+            seed: 1,
+            passed: 9_990,
+            missing: 3,
+            passing: Proportion { share: 0.999, low: 0.998, high: 0.9996 },
+            confidence: 0.95,
+            coverage: 0.99,
+            margin: Some(quantile(0.1)),
+            interval: Some([quantile(0.5), quantile(0.9)]),
+            unit: unit("V"),
+        }),
+        terms: vec![
+            term("R1", Role::UNIFORM, 0.2),
+            term("V_bat", Role::Bias, -0.1),
+            term("R1 ageing", Role::Bias, 0.02),
+            term("ϑ_буй", Role::Random(Distribution::Normal { sigmas: 2.0 }), 1e-6),
+        ],
     }
 }
 

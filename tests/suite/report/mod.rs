@@ -181,6 +181,7 @@ fn letter_paper_and_an_almost_empty_note() {
     empty.note.date = "some day".into();
     empty.note.revisions.clear();
     empty.criteria.clear();
+    empty.spreads.clear();
     empty.body.clear();
     empty.inputs.clear();
     empty.conditions.clear();
@@ -215,7 +216,7 @@ pub fn poisoned() -> Findings {
 
 fn poison(tree: &mut serde_json::Value, key: &str) {
     // Words that name a variant, a colour of a file or a digest are not free text.
-    const FIXED: [&str; 22] = [
+    const FIXED: [&str; 24] = [
         "flow",
         "inline",
         "math",
@@ -224,6 +225,8 @@ fn poison(tree: &mut serde_json::Value, key: &str) {
         "bound",
         "origin",
         "established",
+        "role",
+        "distribution",
         "quantity",
         "style",
         "align",

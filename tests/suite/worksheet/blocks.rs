@@ -136,6 +136,28 @@ fn acceptance_errors() {
         block("acceptance", "a: T_a < 3 [c] x\n"),
         ["9:12 the clause is not closed or something follows it"]
     );
+    for (tail, expected) in [
+        (
+            "over coverage 99 %",
+            "9:17 a coverage needs a reason: extreme value decides unless the note says why not",
+        ),
+        (
+            "over coverage 99 % because \"\"",
+            "9:17 a coverage needs a reason: extreme value decides unless the note says why not",
+        ),
+        ("over coverage because \"x\"", "9:17 no share of specimens follows `coverage`"),
+        (
+            "over coverage 100 % because \"x\"",
+            "9:26 every specimen is `over extremes`; samples cannot show it",
+        ),
+        ("over coverage 99 because \"x\"", "9:26 `99` is no share of specimens that samples can decide"),
+        ("over coverage 3 % because \"x\"", "9:26 `3 %` is no share of specimens that samples can decide"),
+        ("over coverage 99 % because of test", "9:31 no reason in quotes follows"),
+        ("over extremes because \"x\"", "9:26 this reason belongs to nothing"),
+        ("over coverage 99 % from many because \"x\"", "9:36 `many` is no number of samples"),
+    ] {
+        assert_eq!(block("acceptance", &format!("a: T_a < 3 {tail}\n")), [expected], "{tail}");
+    }
     assert_eq!(block("acceptance", "a: T_a < 3 []\n"), ["9:12 the clause is empty"]);
     assert_eq!(block("acceptance", "a: T_a < 3\na: T_a < 4\n"), ["10:1 there are two criteria `a`"]);
     assert_eq!(block("acceptance", "a: T_a < 3 in onn\n"), ["9:15 there is no condition `onn`"]);

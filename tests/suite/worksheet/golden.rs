@@ -167,6 +167,28 @@ fn criteria_carry_region_limit_conditions_and_clause() {
 }
 
 #[test]
+fn a_coverage_carries_its_share_samples_and_reason() {
+    let read = |tail: &str| {
+        let block = format!("```acceptance\na: T_a <= 50 °C {tail}\n```\n");
+        let sheet = super::body(&block);
+        sheet.unwrap().0.acceptance.remove(0)
+    };
+    let line = read("over coverage 99.7 % because \"trimmed in test [7] over night\" safety [LB-1 3.6]");
+    let coverage = line.coverage.unwrap();
+    assert!(
+        (coverage.share - 0.997).abs() < 1e-12 && coverage.text == "99.7 %" && coverage.samples.is_none()
+    );
+    assert_eq!(coverage.because, "trimmed in test [7] over night");
+    assert!(line.safety && line.over == Over::Extremes);
+    assert_eq!(line.clause.map(|clause| clause.value).as_deref(), Some("LB-1 3.6"));
+    assert_eq!(line.text, "T_a <= 50 °C");
+    let line = read("safety over coverage 95% from 20000 samples because “sorted”");
+    let coverage = line.coverage.unwrap();
+    assert!(coverage.samples == Some(20_000) && coverage.because == "sorted" && coverage.text == "95%");
+    assert!(read("over extremes").coverage.is_none());
+}
+
+#[test]
 fn figures_and_recalls_are_found() {
     let worksheet = lamp();
     let FigureKind::Sweep { plot, against, corners, .. } = &worksheet.figures[0].kind else { panic!() };
