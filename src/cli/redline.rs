@@ -5,11 +5,11 @@ use std::path::{Path, PathBuf};
 use serde_json::json;
 
 use crate::diagnostic::Diagnostic;
-use crate::notebook::register::{self, Verdicts};
+use crate::notebook::register;
 use crate::notebook::{self, Notebook};
 use crate::quantity::{self, Shown, Unit};
 use crate::redline::{Cause, FileMove, Moves};
-use crate::study::Verdict;
+use crate::study::{Verdict, Verdicts};
 
 use super::progress::Progress;
 use super::{Console, House, RedlineArguments, UNUSABLE, here, show};
@@ -40,7 +40,7 @@ pub(super) fn run(arguments: &RedlineArguments, house: &House, console: &mut Con
             &|standing| note.is_none_or(|note| standing.sheet.note == note),
             &|findings, moves| Redlined {
                 title: findings.note.title.clone(),
-                verdicts: Verdicts::of(&findings),
+                verdicts: findings.tally().whole(),
                 moves,
             },
             &mut |event| progress.show(event),

@@ -7,10 +7,9 @@ use std::path::Path;
 use serde_json::{Value, json};
 
 use crate::diagnostic::{self, Diagnostics, Severity};
-use crate::notebook::register::Verdicts;
 use crate::quantity::{self, Shown, Unit};
 use crate::source::{self, LARGEST_TEXT};
-use crate::study::Verdict;
+use crate::study::{Verdict, Verdicts};
 
 use super::{Console, MET, NOT_MET, UNUSABLE};
 

@@ -2,10 +2,9 @@
 
 use serde_json::{Value, json};
 
-use crate::notebook::register::Verdicts;
 use crate::notebook::{self, Notebook, Recalculated};
 use crate::quantity::{self, Shown, Unit};
-use crate::study::{Findings, Verdict};
+use crate::study::{Findings, Verdict, Verdicts};
 
 use super::progress::Progress;
 use super::{Console, House, UNUSABLE, VerifyArguments, show};
@@ -141,7 +140,7 @@ fn verified(findings: &Findings) -> Verified {
     judged.sort_by_key(|judged| show::verdict(&judged.verdict).0);
     Verified {
         title: findings.note.title.clone(),
-        verdicts: Verdicts::of(findings),
+        verdicts: findings.tally().whole(),
         judged,
         warnings: findings.warnings.clone(),
     }

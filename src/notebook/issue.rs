@@ -9,7 +9,7 @@ use crate::report::{Issue, Status};
 use crate::source::{Bundle, Digest};
 use crate::study::Findings;
 
-use super::register::{self, Entry, Register, Stored, Verdicts, Withheld};
+use super::register::{self, Entry, Register, Stored, Withheld};
 use super::scan::{Standing, broke_down, scan};
 use super::sheet::Contents;
 use super::shelf::{self, Aside, Shelf};
@@ -197,7 +197,7 @@ fn make(
         schema: findings.schema,
         signatures_cleared: cleared,
         withheld,
-        verdicts: Verdicts::of(&findings),
+        verdicts: findings.tally().whole(),
         pdf: Stored { file: pdf_name, digest: pdf.digest },
         findings: Stored { file: findings_name, digest: json.digest },
         digest: bundle.digest(),

@@ -7,7 +7,7 @@ use serde::{Deserialize, Serialize};
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::source::{Digest, Place};
-use crate::study::{Findings, NoteHead, Verdict};
+use crate::study::{NoteHead, Verdicts};
 
 use super::shelf;
 
@@ -112,51 +112,6 @@ pub enum Role {
     Image,
     Logo,
     Template,
-}
-
-/// How many criteria, stress lines and asserting lines of a derivation have which verdict.
-#[derive(Clone, Copy, PartialEq, Eq, Debug, Default, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
-pub struct Verdicts {
-    pub met: usize,
-    pub met_on_assumptions: usize,
-    pub not_met: usize,
-    pub not_shown: usize,
-}
-
-impl Verdicts {
-    pub fn of(findings: &Findings) -> Verdicts {
-        let mut counts = Verdicts::default();
-        for criterion in &findings.criteria {
-            match criterion.verdict {
-                Verdict::Met => counts.met += 1,
-                Verdict::MetOnAssumptions { .. } => counts.met_on_assumptions += 1,
-                Verdict::NotMet => counts.not_met += 1,
-                Verdict::NotShown { .. } => counts.not_shown += 1,
-            }
-        }
-        for line in &findings.stress {
-            match line.verdict.as_str() {
-                "met" => counts.met += 1,
-                "met-on-assumptions" => counts.met_on_assumptions += 1,
-                "not-met" => counts.not_met += 1,
-                _ => counts.not_shown += 1,
-            }
-        }
-        for step in findings.derivation.iter().filter(|step| step.symbol.is_none()) {
-            match step.holds {
-                Some(true) => counts.met += 1,
-                Some(false) => counts.not_met += 1,
-                None => counts.not_shown += 1,
-            }
-        }
-        counts
-    }
-
-    /// Every criterion is met, on assumptions or not.
-    pub fn all_met(&self) -> bool {
-        self.not_met == 0 && self.not_shown == 0
-    }
 }
 
 impl Default for Register {

@@ -240,7 +240,7 @@ pub fn stress_verdict(line: &StressLine) -> Verdict {
     let reason = line.reason.clone().unwrap_or_default();
     match line.verdict.as_str() {
         "met" => Verdict::Met,
-        "met-on-assumptions" => Verdict::MetOnAssumptions { count: reason.split("; ").count() },
+        "met-on-assumptions" => Verdict::MetOnAssumptions { count: line.assumptions },
         "not-met" => Verdict::NotMet,
         _ => Verdict::NotShown { reason },
     }

@@ -99,6 +99,17 @@ pub struct Extreme {
     pub method: Method,
     /// Axes whose change from here moves the output, most first.
     pub matters: Vec<usize>,
+    /// How many of these, from the first, move it by a good part of its range: those a reader wants to be told.
+    pub telling: usize,
+}
+
+/// A corner in words: inputs and their printed levels, those first that move the result most.
+#[derive(Clone, PartialEq, Debug, Default, Serialize, Deserialize)]
+pub struct Corner {
+    /// Symbol and level: `V_bat` and `14.8 V`, `Q1 gain` and `low`.
+    pub levels: Vec<(String, String)>,
+    /// How many of these, from the first, move the result by more than a twentieth of its range.
+    pub telling: usize,
 }
 
 /// Regions of devices at a point of the space.

@@ -9,6 +9,8 @@ pub(super) const ALL_VERTICES: usize = 7;
 const NOISE: f64 = 1e-9;
 /// An axis matters if it moves the output by more than this share of the output's whole range.
 const MATTERS: f64 = 1e-4;
+/// An axis tells if it moves the output by more than this share of the output's whole range.
+const TELLS: f64 = 0.05;
 /// Changes below this share of the output's whole range are no rise and no fall.
 const FLAT: f64 = 1e-6;
 /// An output that varies by less than this share of its size is not searched for other hills.
@@ -180,10 +182,11 @@ impl Search<'_> {
     fn describe(&mut self, goal: &Goal, candidate: Candidate) -> Extreme {
         let at = self.points.seen[candidate.index].at.clone();
         if goal.range <= 10.0 * goal.noise {
-            return Extreme { value: candidate.value, at, method: Method::Exact, matters: Vec::new() };
+            let (method, matters) = (Method::Exact, Vec::new());
+            return Extreme { value: candidate.value, at, method, matters, telling: 0 };
         }
         let whole = self.courses_are_whole(goal, &at);
-        let matters = self.matters(goal, candidate);
+        let (matters, telling) = self.matters(goal, candidate);
         let at_ends = |axis: &usize| self.points.ends(*axis).contains(&at[*axis]);
         let vertex = matters.iter().all(at_ends);
         let pointed = self.corner_of_courses(goal, candidate);
@@ -196,7 +199,7 @@ impl Search<'_> {
         } else {
             Method::Searched
         };
-        Extreme { value: candidate.value, at, method, matters }
+        Extreme { value: candidate.value, at, method, matters, telling }
     }
 
     /// Whether the search for an end has added as many points as it may.
@@ -349,8 +352,8 @@ impl Search<'_> {
         (low.abs().max(high.abs()), high - low)
     }
 
-    /// The axes whose change from a candidate moves the output, most first.
-    fn matters(&mut self, goal: &Goal, candidate: Candidate) -> Vec<usize> {
+    /// The axes whose change from a candidate moves the output, most first, and how many of them tell.
+    fn matters(&mut self, goal: &Goal, candidate: Candidate) -> (Vec<usize>, usize) {
         let at = self.points.seen[candidate.index].at.clone();
         let mut effects = Vec::new();
         for axis in self.varying.clone() {
@@ -365,7 +368,9 @@ impl Search<'_> {
         }
         effects.retain(|(_, effect)| *effect > MATTERS * goal.range);
         effects.sort_by(|a, b| b.1.total_cmp(&a.1).then(a.0.cmp(&b.0)));
-        effects.into_iter().map(|(axis, _)| axis).collect()
+        let tells = effects.iter().filter(|(_, effect)| *effect > TELLS * goal.range).count();
+        let telling = tells.max(effects.len().min(1));
+        (effects.into_iter().map(|(axis, _)| axis).collect(), telling)
     }
 
     /// Axes that matter and strictly inside of which an extreme lies. An axis that does not move the output rests anywhere.

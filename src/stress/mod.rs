@@ -17,7 +17,7 @@ use serde::{Deserialize, Serialize};
 
 use crate::part::RatingQuantity;
 use crate::quantity::{Kind, Shown, Source, Unit, preferred_unit};
-use crate::spread::margin_is_decided;
+use crate::spread::{Corner, margin_is_decided};
 
 /// One rated quantity of one element in one condition at its worst corner. The study fills the value and the verdict.
 #[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
@@ -28,8 +28,8 @@ pub struct StressLine {
     pub kind: Kind,
     pub unit: Unit,
     pub worst: Shown,
-    /// Inputs that matter at the worst corner: symbol and level.
-    pub corner: Vec<(String, String)>,
+    /// Inputs that matter at the worst corner.
+    pub corner: Corner,
     pub thermal: String,
     /// Absolute maximum rating as the sheet gives it, and at this temperature if it falls with temperature.
     pub rating: Option<f64>,
@@ -39,6 +39,8 @@ pub struct StressLine {
     pub ratio: Option<f64>,
     /// `met`, `met-on-assumptions`, `not-met`, `not-shown`; the reason, where there is more to say.
     pub verdict: String,
+    /// How many assumptions a line that is `met-on-assumptions` rests on.
+    pub assumptions: usize,
     pub reason: Option<String>,
     pub source: Option<Source>,
 }
@@ -59,7 +61,7 @@ pub struct Judged {
     pub ambient: Option<f64>,
     /// Hottest ambient temperature of the declared space (K); `None` where it is not known.
     pub hottest: Option<f64>,
-    pub corner: Vec<(String, String)>,
+    pub corner: Corner,
     /// How many bounds that matter here are assumptions or from memory, those of the rating not counted.
     pub assumptions: usize,
     /// Why nothing is shown although there are numbers (a bound that is only typical).
@@ -77,7 +79,7 @@ pub fn line(demand: &Demand, judged: Judged) -> StressLine {
         (Some(worst), Some(rating)) if rating > 0.0 && !demand.kind.point => Some((worst / rating).max(0.0)),
         _ => None,
     };
-    let (verdict, reason) = verdict(demand, &judged);
+    let (verdict, assumptions, reason) = verdict(demand, &judged);
     let sizes: Vec<f64> = worst.into_iter().chain(rating).chain(limit).collect();
     StressLine {
         designator: demand.designator.clone(),
@@ -92,14 +94,15 @@ pub fn line(demand: &Demand, judged: Judged) -> StressLine {
         limit,
         ratio,
         verdict: verdict.to_owned(),
+        assumptions,
         reason,
         source: demand.source.clone(),
     }
 }
 
-/// Verdict and reason.
-fn verdict(demand: &Demand, judged: &Judged) -> (&'static str, Option<String>) {
-    let not_shown = |reason: String| ("not-shown", Some(reason));
+/// Verdict, number of assumptions that it rests on, and reason.
+fn verdict(demand: &Demand, judged: &Judged) -> (&'static str, usize, Option<String>) {
+    let not_shown = |reason: String| ("not-shown", 0, Some(reason));
     let Some(bound) = demand.bound(judged.normal) else {
         return not_shown(format!("missing: {}", demand.wanted));
     };
@@ -115,7 +118,7 @@ fn verdict(demand: &Demand, judged: &Judged) -> (&'static str, Option<String>) {
     }
     if margin < 0.0 {
         // A confirmed violation stands, however typical the other bounds are.
-        return ("not-met", demand.stands_in.clone());
+        return ("not-met", 0, demand.stands_in.clone());
     }
     if let Some(open) = &judged.open {
         return not_shown(open.clone());
@@ -130,5 +133,5 @@ fn verdict(demand: &Demand, judged: &Judged) -> (&'static str, Option<String>) {
     reasons.extend(assumed.map(str::to_owned));
     reasons.extend(demand.stands_in.clone());
     let reason = (!reasons.is_empty()).then(|| reasons.join("; "));
-    (if count > 0 { "met-on-assumptions" } else { "met" }, reason)
+    (if count > 0 { "met-on-assumptions" } else { "met" }, count, reason)
 }

@@ -1,13 +1,14 @@
 //! The conditions of a note, each cold and in thermal equilibrium, searched for extremes.
 
 use super::compile::Compiled;
+use super::judge::Found;
 use super::response::{Disturbance, InCondition, Moves};
 use crate::circuit::ElementKind;
 use crate::fit::{Bound, Law, Model};
 use crate::part::RatingQuantity;
 use crate::quantity::{Quantity, Role, Spread};
 use crate::solve::{Branch, Region, Thermal};
-use crate::spread::{self, Options, Range, Response};
+use crate::spread::{self, Corner, Options, Range, Response};
 use crate::worksheet::{Condition, ElementState};
 
 /// One condition in one thermal state, with the range of every output.
@@ -286,8 +287,13 @@ impl Case<'_> {
         self.response.moves().iter().map(role).collect()
     }
 
-    /// The inputs that matter at a corner: name and printed level.
-    pub fn corner(&self, compiled: &Compiled<'_>, at: &[f64], matters: &[usize]) -> Vec<(String, String)> {
+    /// The corner at which an extreme was found.
+    pub fn corner(&self, compiled: &Compiled<'_>, found: &Found) -> Corner {
+        Corner { levels: self.levels(compiled, &found.at, &found.matters), telling: found.telling }
+    }
+
+    /// Inputs at a point: name and printed level.
+    pub fn levels(&self, compiled: &Compiled<'_>, at: &[f64], matters: &[usize]) -> Vec<(String, String)> {
         let axes = self.response.axes();
         matters
             .iter()

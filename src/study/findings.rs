@@ -9,11 +9,11 @@ use crate::markup::{Flow, Math};
 use crate::part::Part;
 use crate::quantity::{Kind, Role, Shown, Source, Spread, Unit};
 use crate::source::{Digest, Place};
-use crate::spread::{Proportion, Quantile};
+use crate::spread::{Corner, Proportion, Quantile};
 use crate::stress::StressLine;
 
 /// Version of this shape; a register keeps it with every issue.
-pub const SCHEMA: u32 = 1;
+pub const SCHEMA: u32 = 2;
 
 #[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
 pub struct Findings {
@@ -157,8 +157,8 @@ pub enum Established {
 #[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
 pub struct End {
     pub value: Shown,
-    /// Inputs that matter at this corner: symbol and its printed level (`14.8 V`, `gain low`).
-    pub corner: Vec<(String, String)>,
+    /// Inputs that matter there.
+    pub corner: Corner,
     pub condition: String,
     /// `cold start` or `equilibrium`.
     pub thermal: String,

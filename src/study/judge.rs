@@ -10,7 +10,7 @@ use super::response::Moves;
 use crate::fit::Bound;
 use crate::quantity::{Kind, Origin, Shown, Unit};
 use crate::solve::Thermal;
-use crate::spread::{self, Method, Miss, Response};
+use crate::spread::{self, Corner, Method, Miss, Response};
 use crate::worksheet::{CriterionKind, CriterionLine, Over};
 
 /// A gap matters to a criterion if missing it moves the margin by more than this share of the margin.
@@ -22,14 +22,14 @@ const SHARE_OF_VALUE: f64 = 0.01;
 type Missed = (Gap, Vec<Result<f64, Miss>>);
 
 /// A case and the bits of a point of its space.
-type Corner = (usize, Vec<u64>);
+type Visited = (usize, Vec<u64>);
 
 /// Judges against all cases of a note; keeps what it evaluated, because many results share a corner.
 pub(super) struct Judge<'a> {
     pub compiled: &'a Compiled<'a>,
     pub cases: &'a [Case<'a>],
     pub conditions: &'a [Stated<'a>],
-    missed: RefCell<BTreeMap<Corner, std::rc::Rc<Vec<Missed>>>>,
+    missed: RefCell<BTreeMap<Visited, std::rc::Rc<Vec<Missed>>>>,
 }
 
 /// One end of one output in one case.
@@ -40,6 +40,8 @@ pub(super) struct Found {
     pub at: Vec<f64>,
     pub established: Established,
     pub matters: Vec<usize>,
+    /// How many of these tell, from the first.
+    pub telling: usize,
 }
 
 /// What a verdict rests on.
@@ -79,6 +81,7 @@ impl<'a> Judge<'a> {
                     at: end.at.clone(),
                     established: established(end.method),
                     matters: end.matters.clone(),
+                    telling: end.telling,
                 });
             }
         }
@@ -101,6 +104,7 @@ impl<'a> Judge<'a> {
                     at: case.response.nominal(),
                     established: Established::Exact,
                     matters: Vec::new(),
+                    telling: 0,
                 });
             }
         }
@@ -267,7 +271,7 @@ impl<'a> Judge<'a> {
                 let case = &self.cases[found.case];
                 End {
                     value,
-                    corner: case.corner(self.compiled, &found.at, &found.matters),
+                    corner: case.corner(self.compiled, found),
                     condition: self.conditions[case.condition].name.to_owned(),
                     thermal: case.thermal_name().to_owned(),
                     established: found.established,
@@ -275,7 +279,7 @@ impl<'a> Judge<'a> {
             }
             None => End {
                 value,
-                corner: Vec::new(),
+                corner: Corner::default(),
                 condition: String::new(),
                 thermal: String::new(),
                 established: Established::Searched,

@@ -22,8 +22,10 @@ mod prose;
 mod response;
 mod series;
 mod stressed;
+mod tally;
 
 pub use findings::*;
+pub use tally::{Tally, Verdicts};
 
 use crate::diagnostic::Diagnostics;
 use crate::solve::Thermal;

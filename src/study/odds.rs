@@ -205,6 +205,7 @@ impl Drawn {
             value: margin_of(&self.values[self.tail]),
             at: spread::specimen(&judge.cases[self.case].response, &sampling, self.tail as u64),
             established: Established::Sampled,
+            telling: matters.len(),
             matters,
         }
     }
@@ -289,7 +290,7 @@ fn decide(
     if let Some(right) = outputs.right.and_then(|right| judge.at(&tail, right)) {
         finding.limit = Shown::Value(right);
     }
-    tail.matters = bias;
+    (tail.telling, tail.matters) = (bias.len(), bias);
     finding.worst = judge.shown(Some(&tail), left);
 }
 
@@ -408,7 +409,7 @@ fn compared(
         unit: finding.unit.of_difference(),
         condition: condition.to_owned(),
         thermal: case.thermal_name().to_owned(),
-        held: case.corner(judge.compiled, held, &bias),
+        held: case.levels(judge.compiled, held, &bias),
         nominal,
         extreme,
         combined,

@@ -10,7 +10,7 @@ use crate::circuit::ElementKind;
 use crate::part::RatingQuantity;
 use crate::quantity::Shown;
 use crate::solve::Thermal;
-use crate::spread::Response;
+use crate::spread::{Corner, Response};
 use crate::stress::{self, Judged, StressLine};
 use crate::worksheet::Over;
 
@@ -40,7 +40,7 @@ fn line(judge: &Judge<'_>, outputs: &StressOutputs, index: usize, condition: &St
         margin: None,
         ambient: None,
         hottest,
-        corner: Vec::new(),
+        corner: Corner::default(),
         assumptions: 0,
         open: None,
     };
@@ -62,7 +62,7 @@ fn line(judge: &Judge<'_>, outputs: &StressOutputs, index: usize, condition: &St
             .map_or_else(|| Shown::NotShown("no value at the worst corner".to_owned()), Shown::Value);
         judged.margin = Some(found.value);
         judged.ambient = Some(case.response.ambient(&found.at));
-        judged.corner = case.corner(judge.compiled, &found.at, &found.matters);
+        judged.corner = case.corner(judge.compiled, found);
     }
     match ruling.verdict {
         Verdict::Met | Verdict::NotMet => {}

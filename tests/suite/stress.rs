@@ -8,6 +8,7 @@ use qsheaf::formula::Formula;
 use qsheaf::part::{self, Part, RatingQuantity as Q};
 use qsheaf::quantity::{Dimension, Kind, Origin, Shown};
 use qsheaf::source::{File, Place};
+use qsheaf::spread::Corner;
 use qsheaf::stress::policy::{Class, Derated};
 use qsheaf::stress::{self, Applies, Demand, Judged, Policy, policy};
 use qsheaf::worksheet;
@@ -326,7 +327,7 @@ fn judged(worst: f64, margin: f64) -> Judged {
         margin: Some(margin),
         ambient: Some(323.15),
         hottest: Some(323.15),
-        corner: vec![("V_bat".to_owned(), "14.8 V".to_owned())],
+        corner: Corner { levels: vec![("V_bat".to_owned(), "14.8 V".to_owned())], telling: 1 },
         assumptions: 0,
         open: None,
     }

@@ -97,7 +97,7 @@ fn a_sound_note_is_met() {
     // No less than the row of V_CE(sat) where it covers: 10 mA at a forced gain of about 25.
     let worst = low.worst.value.value().unwrap();
     assert!((0.13..0.3).contains(&worst), "{worst}");
-    assert!(low.worst.corner.iter().any(|(name, level)| name == "Q1 saturation" && level == "high"));
+    assert!(low.worst.corner.levels.iter().any(|(name, level)| name == "Q1 saturation" && level == "high"));
 }
 
 #[test]

@@ -12,6 +12,7 @@ use crate::figure::Drawing;
 use crate::quantity::{Kind, Shown, Unit};
 use crate::redline::Moves;
 use crate::source::Bundle;
+use crate::spread::Corner;
 use crate::study::{FigureFinding, Findings};
 
 use super::cell::{self, DIGITS, Number};
@@ -169,13 +170,21 @@ fn grouped(hex: &str) -> String {
     out
 }
 
-/// A corner as words: `V_bat 14.8 V`, `Q1 gain low`, apart by commas; a level stays with its symbol on one line.
-fn corner(corner: &[(String, String)]) -> Value {
+/// A corner as words: `V_bat 14.8 V`, `Q1 gain low`, apart by commas; a level stays with its symbol on one line. What tells
+/// little is counted only; empty where nothing varies.
+fn corner(corner: &Corner) -> Value {
+    let rest = corner.levels.len().saturating_sub(corner.telling);
+    let told = levels(corner.levels.get(..corner.telling).unwrap_or(&corner.levels));
+    rich(&if rest == 0 { told } else { format!("{told} and {rest}\u{a0}more") })
+}
+
+/// Levels apart by commas.
+fn levels(levels: &[(String, String)]) -> String {
     let level = |(symbol, level): &(String, String)| {
         let text = format!("{symbol} {level}");
         if text.chars().count() <= 20 { text.replace(' ', "\u{a0}") } else { text }
     };
-    rich(&corner.iter().map(level).collect::<Vec<_>>().join(", "))
+    levels.iter().map(level).collect::<Vec<_>>().join(", ")
 }
 
 /// At most `most` characters, the rest told by dots: for the running head only.

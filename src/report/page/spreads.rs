@@ -7,7 +7,7 @@ use crate::spread::Quantile;
 use crate::study::{Findings, SampledFinding, SpreadFinding};
 
 use super::super::cell::{self, DIGITS};
-use super::{corner, rich};
+use super::{levels, rich};
 
 /// Inputs that are printed for one criterion; the findings hold all.
 const INPUTS: usize = 8;
@@ -69,7 +69,7 @@ fn spread(found: &SpreadFinding) -> Value {
     json!({
         "criterion": found.criterion,
         "where": format!("in {}, {}", found.condition, found.thermal),
-        "held": corner(&found.held),
+        "held": rich(&levels(&found.held)),
         "methods": methods,
         "interval": found.sampled.as_ref().and_then(interval).map(|text| rich(&text)),
         "terms": terms,

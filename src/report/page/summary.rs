@@ -3,62 +3,31 @@
 use serde_json::{Value, json};
 
 use crate::quantity::digits_apart;
-use crate::study::{CriterionFinding, Established, Findings, Verdict};
+use crate::study::{CriterionFinding, Established, Findings, Verdict, Verdicts};
 
 use super::super::cell::{self, DIGITS, Number};
 use super::body::em;
 use super::tables::{quantity_name, stress_lines};
 use super::{corner, rich};
 
-/// How many criteria have which verdict.
-#[derive(Clone, Copy, PartialEq, Eq, Debug, Default)]
-pub(crate) struct Counts {
-    pub met: usize,
-    pub assumed: usize,
-    pub not_met: usize,
-    pub not_shown: usize,
-}
-
-/// Counts the criteria that the worksheet states, and the stress lines.
-pub(crate) fn counts(findings: &Findings) -> (Counts, Counts) {
-    let mut criteria = Counts::default();
-    for criterion in &findings.criteria {
-        match criterion.verdict {
-            Verdict::Met => criteria.met += 1,
-            Verdict::MetOnAssumptions { .. } => criteria.assumed += 1,
-            Verdict::NotMet => criteria.not_met += 1,
-            Verdict::NotShown { .. } => criteria.not_shown += 1,
-        }
-    }
-    let mut stress = Counts::default();
-    for line in &findings.stress {
-        match line.verdict.as_str() {
-            "met" => stress.met += 1,
-            "met-on-assumptions" => stress.assumed += 1,
-            "not-met" => stress.not_met += 1,
-            _ => stress.not_shown += 1,
-        }
-    }
-    (criteria, stress)
-}
-
 pub(super) fn counts_value(findings: &Findings) -> Value {
-    let (criteria, stress) = counts(findings);
+    let tally = findings.tally();
     let weak = |wanted: fn(&crate::quantity::Origin) -> bool| {
         findings.inputs.iter().filter(|i| i.source.as_ref().is_some_and(|s| wanted(&s.origin))).count()
     };
     let unsourced = findings.inputs.iter().filter(|input| input.source.is_none()).count();
     let assumption = weak(|origin| matches!(origin, crate::quantity::Origin::Assumption)) + unsourced;
     let memory = weak(|origin| matches!(origin, crate::quantity::Origin::Memory));
-    let of = |counts: Counts| {
+    let of = |counts: Verdicts| {
         json!({
-            "all": counts.met + counts.assumed + counts.not_met + counts.not_shown,
-            "met": counts.met, "assumed": counts.assumed,
+            "all": counts.count(),
+            "met": counts.met, "assumed": counts.met_on_assumptions,
             "not_met": counts.not_met, "not_shown": counts.not_shown,
         })
     };
     json!({
-        "criteria": of(criteria), "stress": of(stress), "inputs": findings.inputs.len(),
+        "criteria": of(tally.criteria), "stress": of(tally.ratings), "assertions": of(tally.assertions),
+        "inputs": findings.inputs.len(),
         "assumption": assumption, "memory": memory,
     })
 }

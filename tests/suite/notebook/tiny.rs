@@ -14,6 +14,7 @@ use qsheaf::redline::Moves;
 use qsheaf::report::Issue;
 use qsheaf::settings;
 use qsheaf::source::{Bundle, Place};
+use qsheaf::spread::Corner;
 use qsheaf::study::*;
 use qsheaf::worksheet;
 
@@ -185,7 +186,7 @@ pub fn volt() -> Unit {
 pub fn end(value: f64) -> End {
     End {
         value: Shown::Value(value),
-        corner: vec![],
+        corner: Corner::default(),
         condition: "on".into(),
         thermal: "cold start".into(),
         established: Established::Exact,

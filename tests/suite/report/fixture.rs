@@ -10,7 +10,7 @@ use qsheaf::quantity::{Dimension, Distribution, Kind, Origin, Role, Shown, Sourc
 use qsheaf::redline::{FileMove, InputMove, Moves, ResultMove, VerdictMove};
 use qsheaf::report::{Issue, Status};
 use qsheaf::source::{Bundle, Digest, File, Place};
-use qsheaf::spread::{Proportion, Quantile};
+use qsheaf::spread::{Corner, Proportion, Quantile};
 use qsheaf::stress::StressLine;
 use qsheaf::study::*;
 
@@ -205,7 +205,7 @@ fn inputs() -> Vec<Input> {
 fn end(value: Shown, corner: &[(&str, &str)], condition: &str, established: Established) -> End {
     End {
         value,
-        corner: pairs(corner),
+        corner: Corner { levels: pairs(corner), telling: corner.len() },
         condition: condition.into(),
         thermal: "equilibrium".into(),
         established,
@@ -764,7 +764,11 @@ fn stress() -> Vec<StressLine> {
                 condition: condition.into(),
                 kind: unit.kind,
                 worst: Shown::Value(si(worst)),
-                corner: pairs(&[("V_bat", "14.8 V"), ("Q1 gain", "high"), ("T_a", "50 °C")]),
+                corner: Corner {
+                    levels: pairs(&[("V_bat", "14.8 V"), ("Q1 gain", "high"), ("T_a", "50 °C")]),
+                    telling: 2,
+                },
+                assumptions: 0,
                 thermal: "equilibrium".into(),
                 rating: (!missing).then(|| si(rating)),
                 limit: (!missing).then(|| si(rating * 0.8)),

@@ -26,7 +26,7 @@ fn note(findings: &Findings, files: &Bundle) -> Vec<u8> {
 fn a_whole_note_keeps_its_standards() {
     let bytes = note(&findings(), &files());
     let pdf = Pdf::read(&bytes);
-    assert_eq!(pdf.pages(), 11);
+    assert_eq!(pdf.pages(), 12);
     let xmp = pdf.xmp();
     for part in [
         "<pdfaid:part>3</pdfaid:part>",
@@ -95,7 +95,7 @@ fn what_a_reviewer_looks_for_is_printed() {
     for words in [
         "Harbour Lights Workshop",
         "LB-017",
-        "sheet 1 of 11",
+        "sheet 1 of 12",
         "issue 3, revision C",
         "A. Designer",
         "2026-10-02",
@@ -145,7 +145,7 @@ fn what_a_reviewer_looks_for_is_printed() {
     for page in 1..=pdf.pages() {
         let text = pdf.text(page);
         assert!(
-            text.contains("LB-017") && text.contains(&format!("sheet {page} of 11")),
+            text.contains("LB-017") && text.contains(&format!("sheet {page} of 12")),
             "page {page}: {text}"
         );
     }
