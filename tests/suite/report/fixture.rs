@@ -1014,6 +1014,7 @@ fn spread() -> SpreadFinding {
         symbol: symbol.into(),
         role,
         reach,
+        sensitivity: reach,
         effect: reach / 2.0,
     };
     SpreadFinding {
