@@ -9,7 +9,7 @@ use crate::quantity::{Dimension, Kind, Role, parse_ageing};
 use crate::source::Place;
 use crate::worksheet::{Record, Spot, source_of};
 
-use super::kinds::{COMMON_KEYS, KINDS, KindRule, part_words};
+use super::kinds::{COMMON_KEYS, KINDS, KindRule, VALUE_KEYS, part_words};
 use super::values::{InPlace, Reader, Wanted};
 use super::{Element, ElementKind, Network, rules};
 
@@ -167,6 +167,7 @@ impl Builder<'_> {
             .chain(rule.terminals.iter().copied())
             .chain(rule.keys.iter().copied())
             .chain(COMMON_KEYS)
+            .chain(VALUE_KEYS.into_iter().filter(|_| rule.value.is_some()))
             .collect();
         for (key, _) in &record.fields {
             if !known.contains(&key.value.as_str()) {
@@ -275,17 +276,16 @@ impl Builder<'_> {
         }
         let source = field(record, "source").map(|text| source_of(text, &[], &mut self.diagnostics));
         let role = field(record, "spread").map(|text| Role::parse(&text.value, &text.place));
-        let ageing = field(record, "ageing").map(|text| (text, parse_ageing(&text.value, &text.place)));
+        let ageing = field(record, "ageing").map(|text| parse_ageing(&text.value, &text.place));
         let role = role.and_then(|role| self.diagnostics.keep(role));
-        let drift = ageing.and_then(|(text, drift)| self.diagnostics.keep(drift).map(|drift| (text, drift)));
-        let (inputs_before, aged_at) =
-            (self.inputs.len(), drift.as_ref().map(|(text, _)| text.place.clone()));
+        let ageing = ageing.and_then(|ageing| self.diagnostics.keep(ageing));
+        let (inputs_before, varies, ages) = (self.inputs.len(), role.is_some(), ageing.is_some());
         let mut reader = Reader {
             basis: self.basis,
             source,
             about: element.about.clone(),
             role,
-            ageing: drift.map(|(_, drift)| drift),
+            ageing,
             inputs: &mut self.inputs,
             diagnostics: &mut self.diagnostics,
         };
@@ -294,13 +294,19 @@ impl Builder<'_> {
             read_main(&mut reader, text, rule, wanted, &mut element);
         }
         read_further(&mut reader, record, rule, &mut element);
-        if let Some(place) = aged_at
-            && !self.inputs[inputs_before..].iter().any(|input| input.ageing.is_some())
-        {
-            let message = format!("`{}` has no value of its own that could age", record.key.value);
-            self.diagnostics.push(Diagnostic::error(&place, message).expected(
-                "ageing with a value written in place; that of a basis value stands with it: `R_x: 1 kΩ ± 1 %, ageing ± 2 %`",
-            ));
+        let made = &self.inputs[inputs_before..];
+        let ages = ages && made.iter().all(|input| input.ageing.is_none());
+        let idle = [
+            ("spread", varies && made.is_empty(), "vary", "spread: normal"),
+            ("ageing", ages, "age", "ageing: ± 2 %"),
+        ];
+        for (key, idle, word, example) in idle {
+            if let Some(text) = field(record, key).filter(|_| idle) {
+                let message = format!("`{}` has no value of its own that could {word}", record.key.value);
+                self.diagnostics.push(Diagnostic::error(&text.place, message).expected(format!(
+                    "a value written in place; in the basis `R_x: {{value: 1 kΩ ± 1 %, source: ..., {example}}}`"
+                )));
+            }
         }
         let wrong =
             self.diagnostics.0[before..].iter().any(|d| d.severity == crate::diagnostic::Severity::Error);

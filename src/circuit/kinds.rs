@@ -27,7 +27,10 @@ pub(super) struct KindRule {
 }
 
 /// Keys that every record may have.
-pub(super) const COMMON_KEYS: [&str; 4] = ["source", "about", "spread", "ageing"];
+pub(super) const COMMON_KEYS: [&str; 2] = ["source", "about"];
+
+/// Keys that say how a value varies and drifts; a device has no value, and how its specimens vary stands with its part.
+pub(super) const VALUE_KEYS: [&str; 2] = ["spread", "ageing"];
 
 const TWO_ENDS: &[&str] = &["from", "to"];
 const POLES: &[&str] = &["plus", "minus"];

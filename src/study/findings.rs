@@ -286,6 +286,8 @@ pub struct SampledFinding {
 pub struct TermFinding {
     pub symbol: String,
     pub role: Role,
+    /// Change of the margin for a unit of the input (SI units; a spread axis of a part runs from -1 to 1).
+    pub sensitivity: f64,
     /// Change of the margin for the half-width of the input (SI unit of the margin).
     pub reach: f64,
     /// Change of the margin where the bias stands, or for one standard deviation.

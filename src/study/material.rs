@@ -210,10 +210,12 @@ fn role(value: &circuit::InPlace, network: &Network, parts: &BTreeMap<String, Pa
     );
     let own = value.symbol == owner || value.symbol.ends_with(".R_w");
     let of_part = element.and_then(|e| e.part.as_deref()).and_then(|name| parts.get(name)?.spread);
+    // What a record says of its value says nothing about its mounting or its drift with temperature.
+    let further = [".R_th", ".TCR"].iter().any(|end| value.symbol.ends_with(end));
     match value.role {
-        Some(role) => role,
-        None if own && bought => of_part.unwrap_or(Role::UNIFORM),
-        None => Role::Bias,
+        Some(role) if !further => role,
+        _ if own && bought => of_part.unwrap_or(Role::UNIFORM),
+        _ => Role::Bias,
     }
 }
 

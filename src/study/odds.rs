@@ -26,7 +26,7 @@ const CONFIDENCE: f64 = 0.95;
 const LEAST_SAMPLES: usize = 10_000;
 const FAILING: f64 = 10.0;
 /// Specimens by which the worst end of the bias-like inputs is settled, and how often all are gone through.
-const PILOT: usize = 200;
+const PILOT: usize = 1_000;
 const ROUNDS: usize = 4;
 /// Coverage factor where no coverage is asked for (three standard deviations, common practice).
 const COVERAGE_FACTOR: f64 = 3.0;
@@ -379,6 +379,7 @@ fn compared(
             let terms = found.terms.iter().map(|term| TermFinding {
                 symbol: name(term.axis),
                 role: term.role,
+                sensitivity: term.sensitivity,
                 reach: term.reach,
                 effect: term.effect,
             });

@@ -171,6 +171,11 @@ fn read_tail(words: &[Spot<String>], reason: Option<Reason>, diagnostics: &mut D
                             .nearest(&next.value, ["extremes", "nominal", "coverage"]),
                     );
                 }
+                if wanted.is_none() && words.get(at).is_some_and(|word| coverage::is_number(&word.value)) {
+                    // A misspelt coverage: what follows it is none of the words expected here.
+                    at -= 1;
+                    coverage::read(words, &mut at, reason.take(), diagnostics);
+                }
                 over = wanted;
             }
             "in" => {

@@ -25,7 +25,9 @@ pub(super) fn counts_value(findings: &Findings) -> Value {
             "not_met": counts.not_met, "not_shown": counts.not_shown,
         })
     };
+    let by_coverage = findings.criteria.iter().filter(|criterion| criterion.coverage.is_some()).count();
     json!({
+        "by_coverage": by_coverage,
         "criteria": of(tally.criteria), "stress": of(tally.ratings), "assertions": of(tally.assertions),
         "inputs": findings.inputs.len(),
         "assumption": assumption, "memory": memory,

@@ -64,6 +64,7 @@ pub(super) fn basis(findings: &Findings) -> Value {
                             "nominal": nominal,
                             "high": if exact { Value::Null } else { high },
                             "source": source(input.source.as_ref()),
+                            "varies": varies(findings, input),
                         })
                     })
                     .collect();
@@ -71,6 +72,11 @@ pub(super) fn basis(findings: &Findings) -> Value {
             })
             .collect::<Vec<_>>()
     )
+}
+
+/// How an input varies, where the note counts by that.
+fn varies(findings: &Findings, input: &Input) -> Option<String> {
+    (!findings.spreads.is_empty() && !input.spread.is_exact()).then(|| input.role.text())
 }
 
 /// `Q1 gain` is words, `Q1.I_C` and `V_bat` are symbols.

@@ -119,10 +119,16 @@ pub(super) fn read(
     right.then(|| Coverage { share, text, samples, because: because.text, place: word.place.clone() })
 }
 
+/// Whether a word begins like a share.
+pub(super) fn is_number(word: &str) -> bool {
+    word.starts_with(|c: char| c.is_ascii_digit())
+}
+
 /// `99.7 %` or `99.7%`, and its place; where it is missing, the word before it.
 fn share_text(words: &[Spot<String>], at: &mut usize, word: &Spot<String>) -> (String, Place) {
-    let begins = |word: &&Spot<String>| word.value.starts_with(|c: char| c.is_ascii_digit());
-    let Some(number) = words.get(*at).filter(begins) else { return (String::new(), word.place.clone()) };
+    let Some(number) = words.get(*at).filter(|word| is_number(&word.value)) else {
+        return (String::new(), word.place.clone());
+    };
     *at += 1;
     if words.get(*at).is_some_and(|unit| unit.value == "%") {
         *at += 1;

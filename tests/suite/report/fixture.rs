@@ -1018,6 +1018,7 @@ fn spread() -> SpreadFinding {
         symbol: symbol.into(),
         role,
         reach,
+        sensitivity: reach,
         effect: reach / 2.0,
     };
     SpreadFinding {

@@ -115,6 +115,8 @@ fn supplies_stay_at_their_worst_end_and_parts_are_drawn() {
     assert_eq!(roles[2], ("V_cc", Role::Bias));
     assert!(roles[..2].iter().all(|(_, role)| *role == Role::UNIFORM), "{roles:?}");
     close(spread.terms[0].reach.abs(), 0.125, 1e-3);
+    // d(5.28 V - V_cc / 2) / d V_cc.
+    close(spread.terms[2].sensitivity, -0.5, 1e-9);
     // Declared otherwise, it is drawn as well.
     let drawn = divider(&[(
         "V_cc: 10 V [specification S-1 clause 1]",
@@ -129,6 +131,21 @@ fn supplies_stay_at_their_worst_end_and_parts_are_drawn() {
         divider(&[("R1: {resistor: 1 kΩ ± 5 %", "R1: {spread: bias, resistor: 1 kΩ ± 5 %")]).unwrap();
     assert_eq!(only(&biased).held, [("R1".to_owned(), "0.950\u{a0}kΩ".to_owned())]);
     assert_eq!(verdict(&biased, "high"), Verdict::NotMet);
+}
+
+/// A bias whose worst end for the tail of specimens is not the one at the extremes: what 99 % of stages keep is judged there.
+#[test]
+fn a_bias_stands_where_it_is_worst_for_the_share_asked_for() {
+    // Beyond 5.23 V, which all but 0.32 % stay below, a large weight is worse; below it a small one.
+    let found = divider(&[
+        ("T_a:", "w: 1 to 2 [specification S-1 clause 3]\nT_a:"),
+        ("out.V <= 5.23 V", "w * (out.V - 5.23 V) <= -0.02 V"),
+    ])
+    .unwrap();
+    let spread = only(&found);
+    close(spread.extreme.value().unwrap(), -0.02 - 2.0 * 0.02, 1e-9);
+    assert_eq!(spread.held, [("w".to_owned(), "1.00".to_owned())]);
+    close(spread.sampled.as_ref().unwrap().margin.unwrap().value, 5.21 - 5.25 + 0.001_25_f64.sqrt(), 0.003);
 }
 
 #[test]
@@ -178,6 +195,38 @@ fn ageing_is_an_axis_of_its_own() {
         .replace("T_a:", "R_x: 1 kΩ ± 5 % [drawing S-2]\nT_a:");
     let worst = run(&named, &family).unwrap().spreads[0].extreme.value().unwrap();
     close(worst, 5.23 - 10.0 * 1.05 * 1.02 / (1.05 * 1.02 + 0.95), 1e-9);
+}
+
+#[test]
+fn what_cannot_vary_or_age_is_told() {
+    for (from, to, expected) in [
+        ("R2: {resistor: 1 kΩ ± 5 %", "R2: {ageing: 2 %, resistor: 1 kΩ ± 5 %", "`2 %` is no drift with age"),
+        ("R2: {resistor: 1 kΩ ± 5 %", "R2: {ageing: ± 120 %, resistor: 1 kΩ ± 5 %", "is no drift with age"),
+        (
+            "PS1: {supply: V_cc",
+            "PS1: {ageing: ± 2 %, supply: V_cc",
+            "`PS1` has no value of its own that could age",
+        ),
+        (
+            "PS1: {supply: V_cc",
+            "PS1: {spread: normal, supply: V_cc",
+            "`PS1` has no value of its own that could vary",
+        ),
+        (
+            "R2: {resistor",
+            "R2: {spread: norml, resistor",
+            "`norml` does not say how a value varies (normal?)",
+        ),
+        ("R2: {resistor", "R2: {spread: normal 20 sigma, resistor", "`normal 20 sigma` does not say how"),
+        ("V_cc: 10 V [", "V_cc: 10 V, ageing ± 2 V [", "`± 2 V` is no drift with age"),
+    ] {
+        let found = divider(&[(from, to)]).unwrap_err();
+        assert!(found.contains(expected) && found.lines().count() == 1, "{to}:\n{found}");
+    }
+    let device = run(&SHEET.replace("{npn: X-1,", "{npn: X-1, spread: normal,"), PART).unwrap_err();
+    assert!(device.contains("an NPN transistor has no `spread`"), "{device}");
+    let part = run(SHEET, &PART.replace("kind: npn", "kind: npn\n  spread: gauss")).unwrap_err();
+    assert!(part.contains("parts/x.yaml:3:") && part.contains("`gauss` does not say how"), "{part}");
 }
 
 #[test]

@@ -153,6 +153,7 @@ fn acceptance_errors() {
         ("over coverage 99 because \"x\"", "9:26 `99` is no share of specimens that samples can decide"),
         ("over coverage 3 % because \"x\"", "9:26 `3 %` is no share of specimens that samples can decide"),
         ("over coverage 99 % because of test", "9:31 no reason in quotes follows"),
+        ("over coverge 99 % because \"x\"", "9:17 `coverge` does not say over what the criterion holds"),
         ("over extremes because \"x\"", "9:26 this reason belongs to nothing"),
         ("over coverage 99 % from many because \"x\"", "9:36 `many` is no number of samples"),
     ] {
