@@ -12,7 +12,7 @@ use crate::source::{Digest, Place};
 use crate::stress::StressLine;
 
 /// Version of this shape; a register keeps it with every issue.
-pub const SCHEMA: u32 = 1;
+pub const SCHEMA: u32 = 2;
 
 #[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
 pub struct Findings {

@@ -1,6 +1,7 @@
 //! Device equations: against mpmath (tests/reference/device_currents.py), derivatives against differences, temperature laws,
 //! and what the trade expects of silicon.
 
+use qsheaf::device::course::Course;
 use qsheaf::device::diode::{self, Diode};
 use qsheaf::device::transistor::{self, Transistor};
 use qsheaf::device::{BOLTZMANN, ELEMENTARY_CHARGE, REFERENCE_TEMPERATURE, thermal_voltage};
@@ -24,6 +25,8 @@ const FULL: Transistor = Transistor {
     energy_gap: 1.12,
     saturation_exponent: 3.0,
     gain_exponent: 1.5,
+    gain_over_current: Course::ZERO,
+    gain_over_temperature: Course::ZERO,
 };
 
 /// The same without anything beyond Ebers and Moll.

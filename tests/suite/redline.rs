@@ -337,12 +337,12 @@ fn findings_are_read_back_as_they_were_written() {
     let findings = findings();
     let json = serde_json::to_vec_pretty(&findings).unwrap();
     assert_eq!(recall(&json).unwrap(), findings);
-    let other = String::from_utf8(json).unwrap().replacen("\"schema\": 1", "\"schema\": 0", 1);
+    let other = String::from_utf8(json).unwrap().replacen("\"schema\": 2", "\"schema\": 0", 1);
     assert_eq!(recall(other.as_bytes()), Err(Unreadable::Schema(0)));
-    assert!(matches!(recall(b"{\"schema\": 1}"), Err(Unreadable::Malformed(_))));
+    assert!(matches!(recall(b"{\"schema\": 2}"), Err(Unreadable::Malformed(_))));
     assert!(matches!(recall(b"%PDF-1.7"), Err(Unreadable::Malformed(_))));
     let text = recall(other.as_bytes()).unwrap_err().to_string();
-    assert!(text.contains("schema 0") && text.contains("schema 1"));
+    assert!(text.contains("schema 0") && text.contains("schema 2"));
 }
 
 #[test]
