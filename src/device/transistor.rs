@@ -2,7 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
-use super::course::Course;
+use super::curve::Curve;
 use super::{REFERENCE_TEMPERATURE, growth, leakage, saturation_growth, thermal_voltage};
 use crate::numeric;
 
@@ -48,8 +48,10 @@ pub struct Transistor {
     /// How far this specimen's forward gain lies from what the parameters above give, as the logarithm of a factor: over
     /// the logarithm of the emitter junction's exponential current (A), and over that of T / 25 °C. It acts on the base
     /// current alone; I_C against V_BE stays as it is.
-    pub gain_over_current: Course,
-    pub gain_over_temperature: Course,
+    #[serde(default, skip_serializing_if = "Curve::is_zero")]
+    pub gain_over_current: Curve,
+    #[serde(default, skip_serializing_if = "Curve::is_zero")]
+    pub gain_over_temperature: Curve,
 }
 
 /// Currents into collector and base of the intrinsic transistor and their derivatives over its junction voltages.

@@ -8,7 +8,7 @@ use super::simulate::{self, AtBias};
 use super::transistor::is_cool;
 use super::{Bound, GainEnd, SpreadAxis, TransistorLaw, bound, check, row_text};
 use crate::device::REFERENCE_TEMPERATURE;
-use crate::device::course::{Course, NODES};
+use crate::device::curve::{Curve, NODES};
 use crate::device::transistor::Transistor;
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::part::{Part, Row, RowQuantity};
@@ -18,7 +18,7 @@ const OUTSIDE: f64 = 1e-9;
 /// A specimen whose gain differs from the typical curve by more than this factor speaks of contradictory rows.
 const WIDEST_GAIN: f64 = 12.0;
 /// How much the factor on the gain (its logarithm) may rise and fall per e-fold of current. The base current rises at least
-/// with the root of the junction's exponential current; a gain that rose faster would make it fall with V_BE, and a course
+/// with the root of the junction's exponential current; a gain that rose faster would make it fall with V_BE, and a curve
 /// is at most twice as steep as these lines. Where rows are steeper, the milder one gives way, outward.
 const STEEPEST_RISE: f64 = 0.2;
 const STEEPEST_FALL: f64 = 0.5;
@@ -127,22 +127,22 @@ fn gain_end(depths: &[Depth<'_>], side: Side) -> GainEnd {
     let is_cool = |depth: &&Depth<'_>| is_cool(depth.row) || !has_cool;
     let points = depths.iter().filter(is_cool).map(|depth| [depth.current, depth.depth]).collect();
     let cool = thinned(not_too_steep(ordered(points), side));
-    let Some(course) = Course::through(&cool) else { return GainEnd::default() };
+    let Some(curve) = Curve::through(&cool) else { return GainEnd::default() };
     // No temperature turns a low end into a high one.
     let least = -cool.iter().map(|point| point[1]).fold(f64::INFINITY, f64::min);
     let mut other: Vec<[f64; 2]> = depths
         .iter()
         .filter(|depth| !is_cool(depth))
         .map(|depth| {
-            let more = depth.depth - course.at(depth.current).0;
+            let more = depth.depth - curve.at(depth.current).0;
             [libm::log(depth.row.at.t_j / REFERENCE_TEMPERATURE), (more + OUTSIDE).max(least)]
         })
         .collect();
     if !other.is_empty() {
         other.push([0.0, 0.0]);
     }
-    let over_temperature = Course::through(&thinned(ordered(other))).unwrap_or_default();
-    GainEnd { over_current: course.times(side.sign()), over_temperature: over_temperature.times(side.sign()) }
+    let over_temperature = Curve::through(&thinned(ordered(other))).unwrap_or_default();
+    GainEnd { over_current: curve.times(side.sign()), over_temperature: over_temperature.times(side.sign()) }
 }
 
 /// Points in rising order; of several at one place the outermost.
@@ -170,7 +170,7 @@ fn not_too_steep(points: Vec<[f64; 2]>, side: Side) -> Vec<[f64; 2]> {
     points.iter().copied().map(outward).collect()
 }
 
-/// Takes out inner points until a course can hold them; the neighbours of each move outward to its depth.
+/// Takes out inner points until a curve can hold them; the neighbours of each move outward to its depth.
 fn thinned(mut points: Vec<[f64; 2]>) -> Vec<[f64; 2]> {
     while points.len() > NODES {
         let cost = |k: usize| {

@@ -13,6 +13,8 @@ use crate::part::{Part, PartKind, Row, RowQuantity};
 const EMISSION: f64 = 1.8;
 /// Dynamic resistance of a Zener without a row, as a share of V_Z / I_Z.
 const SLOPE_SHARE: f64 = 0.02;
+/// Rounds in which an end of V_F settles, at most.
+const ROUNDS: usize = 20;
 /// Share of r_Z that the series resistance takes at most.
 const SERIES_SHARE: f64 = 0.5;
 
@@ -37,19 +39,14 @@ pub(super) fn fit(part: &Part) -> Result<Model, Diagnostics> {
         let scale = row.at.t_j / REFERENCE_TEMPERATURE;
         widen(&mut ends, row, (row.min, row.max), |limit| (limit - model) / scale);
     }
-    // Far below the saturation current's own scale the closed form is no pure shift: a microvolt more stays outside.
-    for (end, outward) in ends.iter_mut().zip([-2e-6, 2e-6]) {
-        if let Some((_, shift)) = end {
-            *shift += outward;
-        }
-    }
     let value = |end: &Option<(&Row, f64)>| end.map_or(0.0, |(_, shift)| shift);
-    let law = DiodeLaw {
+    let mut law = DiodeLaw {
         nominal,
         v_f: [value(&ends[0]), value(&ends[1])],
         leakage: [0.0, leak.high],
         v_z: [value(&z_shift[0]), value(&z_shift[1])],
     };
+    settle_forward(part, &mut law);
     let first = part.rows_of(RowQuantity::ForwardVoltage).next();
     let at = first.map_or(String::new(), |row| format!(" at {}", row_text(row)));
     let side = |end: &Option<(&Row, f64)>, wanted: String| bound(end.iter().map(|(row, _)| *row), wanted);
@@ -98,6 +95,25 @@ fn widen<'r>(
         let shift = (shift_for(max) + 1e-9).max(0.0);
         if ends[1].is_none_or(|(_, most)| shift > most) {
             ends[1] = Some((row, shift));
+        }
+    }
+}
+
+/// Moves the ends of V_F further out until no row of V_F lies beyond them: where other currents than the junction's own flow
+/// (at the scale of the saturation current, or in a soft breakdown) a shift of the junction is not quite one of the diode.
+fn settle_forward(part: &Part, law: &mut DiodeLaw) {
+    for (k, sign) in [(0, -1.0), (1, 1.0)] {
+        for _ in 0..ROUNDS {
+            let specimen = law.specimen(&[sign, 0.0, 0.0, 0.0]);
+            let missing = part.rows_of(RowQuantity::ForwardVoltage).filter_map(|row| {
+                let limit = if sign < 0.0 { row.min } else { row.max };
+                Some(sign * (limit? - shown(&specimen, row)?) * REFERENCE_TEMPERATURE / row.at.t_j)
+            });
+            let most = missing.fold(0.0, f64::max);
+            if most <= 0.0 {
+                break;
+            }
+            law.v_f[k] += sign * (most + 1e-9);
         }
     }
 }

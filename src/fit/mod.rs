@@ -12,7 +12,7 @@ mod transistor;
 
 use serde::{Deserialize, Serialize};
 
-use crate::device::course::Course;
+use crate::device::curve::Curve;
 use crate::device::diode::Diode;
 use crate::device::transistor::Transistor;
 use crate::diagnostic::{Diagnostic, Diagnostics};
@@ -62,6 +62,7 @@ pub struct Residual {
 /// The law of a device with its spread.
 #[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
 #[serde(tag = "law", rename_all = "kebab-case")]
+#[expect(clippy::large_enum_variant, reason = "one a part: nothing is gained by a box")]
 pub enum Law {
     Transistor(TransistorLaw),
     Diode(DiodeLaw),
@@ -91,9 +92,9 @@ pub struct TransistorLaw {
 #[derive(Clone, Copy, PartialEq, Debug, Default, Serialize, Deserialize)]
 pub struct GainEnd {
     /// Over the logarithm of the emitter junction's exponential current (A): what the limits at 25 °C ask for.
-    pub over_current: Course,
+    pub over_current: Curve,
     /// Over the logarithm of T / 25 °C: what limits at other temperatures ask for beyond that.
-    pub over_temperature: Course,
+    pub over_temperature: Curve,
 }
 
 /// A maximum row of V_CE(sat) or V_BE(sat).

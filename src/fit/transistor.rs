@@ -14,7 +14,7 @@ use super::leakage::{self, Leakage};
 use super::{
     Bound, GainEnd, Law, Model, SaturationRow, SpreadAxis, TransistorLaw, axes, residuals, simulate,
 };
-use crate::device::course::Course;
+use crate::device::curve::Curve;
 use crate::device::transistor::Transistor;
 use crate::device::{REFERENCE_TEMPERATURE, thermal_voltage};
 use crate::diagnostic::{Diagnostic, Diagnostics};
@@ -162,8 +162,8 @@ fn gain_curve(part: &Part, notes: &mut Vec<String>, errors: &mut Diagnostics) ->
         energy_gap: ENERGY_GAP,
         saturation_exponent: SATURATION_EXPONENT,
         gain_exponent,
-        gain_over_current: Course::ZERO,
-        gain_over_temperature: Course::ZERO,
+        gain_over_current: Curve::ZERO,
+        gain_over_temperature: Curve::ZERO,
     }
 }
 

@@ -1,6 +1,6 @@
 //! Devices at a given bias: confirmed solutions of the device equations, the same as by nested halving.
 
-use qsheaf::device::course::Course;
+use qsheaf::device::curve::Curve;
 use qsheaf::device::transistor::{AtTemperature, Transistor};
 use qsheaf::fit::simulate::{self, AtBias};
 
@@ -24,8 +24,8 @@ pub fn device() -> Transistor {
         energy_gap: 1.12,
         saturation_exponent: 3.0,
         gain_exponent: 1.5,
-        gain_over_current: Course::ZERO,
-        gain_over_temperature: Course::ZERO,
+        gain_over_current: Curve::ZERO,
+        gain_over_temperature: Curve::ZERO,
     }
 }
 

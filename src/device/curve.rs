@@ -2,7 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
-/// Points of a course at most.
+/// Points of a curve at most.
 pub const NODES: usize = 8;
 
 /// A function through given points: monotone between two of them, constant beyond the outermost, without a jump in value or
@@ -11,45 +11,45 @@ pub const NODES: usize = 8;
 /// steepest of these lines. Without points it is zero.
 #[derive(Clone, Copy, PartialEq, Debug, Default, Serialize, Deserialize)]
 #[serde(into = "Vec<[f64; 2]>", try_from = "Vec<[f64; 2]>")]
-pub struct Course {
+pub struct Curve {
     count: usize,
     at: [f64; NODES],
     value: [f64; NODES],
     slope: [f64; NODES],
 }
 
-impl Course {
+impl Curve {
     /// Zero everywhere.
-    pub const ZERO: Course = Course { count: 0, at: [0.0; NODES], value: [0.0; NODES], slope: [0.0; NODES] };
+    pub const ZERO: Curve = Curve { count: 0, at: [0.0; NODES], value: [0.0; NODES], slope: [0.0; NODES] };
 
-    /// The course through `points` (place, value), places rising; `None` for other orders, more than [`NODES`] points, or
+    /// The curve through `points` (place, value), places rising; `None` for other orders, more than [`NODES`] points, or
     /// what is no number.
-    pub fn through(points: &[[f64; 2]]) -> Option<Course> {
+    pub fn through(points: &[[f64; 2]]) -> Option<Curve> {
         let rises = points.windows(2).all(|pair| pair[0][0] < pair[1][0]);
         if points.len() > NODES || !rises || points.iter().flatten().any(|x| !x.is_finite()) {
             return None;
         }
-        let mut course = Course { count: points.len(), ..Course::ZERO };
+        let mut curve = Curve { count: points.len(), ..Curve::ZERO };
         for (k, [at, value]) in points.iter().enumerate() {
-            (course.at[k], course.value[k]) = (*at, *value);
+            (curve.at[k], curve.value[k]) = (*at, *value);
         }
         let secant = |k: usize| (points[k + 1][1] - points[k][1]) / (points[k + 1][0] - points[k][0]);
         for k in 1..points.len().saturating_sub(1) {
             let (before, after) = (secant(k - 1), secant(k));
             if before * after > 0.0 {
-                course.slope[k] = 2.0 * before * after / (before + after);
+                curve.slope[k] = 2.0 * before * after / (before + after);
             }
         }
-        Some(course)
+        Some(curve)
     }
 
     pub fn is_zero(&self) -> bool {
         self.count == 0
     }
 
-    /// The course with all values multiplied.
-    pub fn times(&self, factor: f64) -> Course {
-        Course { value: self.value.map(|v| v * factor), slope: self.slope.map(|s| s * factor), ..*self }
+    /// The curve with all values multiplied.
+    pub fn times(&self, factor: f64) -> Curve {
+        Curve { value: self.value.map(|v| v * factor), slope: self.slope.map(|s| s * factor), ..*self }
     }
 
     /// Value and slope at `x`.
@@ -73,16 +73,16 @@ impl Course {
     }
 }
 
-impl From<Course> for Vec<[f64; 2]> {
-    fn from(course: Course) -> Self {
-        (0..course.count).map(|k| [course.at[k], course.value[k]]).collect()
+impl From<Curve> for Vec<[f64; 2]> {
+    fn from(curve: Curve) -> Self {
+        (0..curve.count).map(|k| [curve.at[k], curve.value[k]]).collect()
     }
 }
 
-impl TryFrom<Vec<[f64; 2]>> for Course {
+impl TryFrom<Vec<[f64; 2]>> for Curve {
     type Error = String;
 
     fn try_from(points: Vec<[f64; 2]>) -> Result<Self, String> {
-        Course::through(&points).ok_or_else(|| format!("{} points that are no course", points.len()))
+        Curve::through(&points).ok_or_else(|| format!("{} points that are no curve", points.len()))
     }
 }
