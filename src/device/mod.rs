@@ -2,6 +2,7 @@
 //!
 //! All equations are written for an NPN transistor; the solver turns signs for PNP. SI units, temperatures in kelvin.
 
+pub mod curve;
 pub mod diode;
 pub mod transistor;
 

@@ -2,6 +2,7 @@
 
 use serde::{Deserialize, Serialize};
 
+use super::curve::Curve;
 use super::{REFERENCE_TEMPERATURE, growth, leakage, saturation_growth, thermal_voltage};
 use crate::numeric;
 
@@ -44,6 +45,13 @@ pub struct Transistor {
     pub saturation_exponent: f64,
     /// Temperature exponent of the gains.
     pub gain_exponent: f64,
+    /// How far this specimen's forward gain lies from what the parameters above give, as the logarithm of a factor: over
+    /// the logarithm of the emitter junction's exponential current (A), and over that of T / 25 °C. It acts on the base
+    /// current alone; I_C against V_BE stays as it is.
+    #[serde(default, skip_serializing_if = "Curve::is_zero")]
+    pub gain_over_current: Curve,
+    #[serde(default, skip_serializing_if = "Curve::is_zero")]
+    pub gain_over_temperature: Curve,
 }
 
 /// Currents into collector and base of the intrinsic transistor and their derivatives over its junction voltages.
@@ -62,6 +70,8 @@ pub struct Currents {
 pub struct AtTemperature {
     pub parameters: Transistor,
     pub thermal_voltage: f64,
+    /// ln I_S.
+    log_saturation: f64,
 }
 
 impl Transistor {
@@ -71,14 +81,18 @@ impl Transistor {
     /// charge would stop being real.
     pub fn at(&self, t_j: f64) -> AtTemperature {
         let grown = saturation_growth(self.energy_gap, self.saturation_exponent, t_j);
-        let gain = numeric::exp(self.gain_exponent * libm::log(t_j / REFERENCE_TEMPERATURE));
-        let side = numeric::exp(grown / self.emitter_leakage_emission) / gain;
+        let log_ratio = libm::log(t_j / REFERENCE_TEMPERATURE);
+        let gain = numeric::exp(self.gain_exponent * log_ratio);
+        let own = gain * numeric::exp(self.gain_over_temperature.at(log_ratio).0);
+        let side = numeric::exp(grown / self.emitter_leakage_emission) / own;
         let saturation_current = self.saturation_current * numeric::exp(grown);
+        let bent = !self.gain_over_current.is_zero();
         AtTemperature {
             thermal_voltage: thermal_voltage(t_j),
+            log_saturation: if bent { libm::log(saturation_current) } else { 0.0 },
             parameters: Transistor {
                 saturation_current,
-                gain_forward: self.gain_forward * gain,
+                gain_forward: self.gain_forward * own,
                 gain_reverse: self.gain_reverse * gain,
                 knee_current_forward: self.knee_current_forward.max(8.0 * saturation_current),
                 emitter_leakage: self.emitter_leakage * side,
@@ -119,12 +133,21 @@ impl AtTemperature {
         // The cut-off current flows from collector to base.
         let (cutoff, d_cutoff) = leakage(p.cutoff_current, v_bc, self.thermal_voltage);
 
+        // What the emitter junction takes from the base.
+        let (mut base, mut d_base) = (forward / p.gain_forward + leak, d_forward / p.gain_forward + d_leak);
+        if !p.gain_over_current.is_zero() {
+            let (log_gain, slope) = p.gain_over_current.at(self.log_saturation + v_be / n_vt);
+            let factor = numeric::exp(-log_gain);
+            d_base = factor * (d_base - base * slope / n_vt);
+            base *= factor;
+        }
+
         Currents {
             i_c: transport - reverse / p.gain_reverse - cutoff,
-            i_b: forward / p.gain_forward + leak + reverse / p.gain_reverse + cutoff,
+            i_b: base + reverse / p.gain_reverse + cutoff,
             di_c_dv_be: dt_dv_be,
             di_c_dv_bc: dt_dv_bc - d_reverse / p.gain_reverse - d_cutoff,
-            di_b_dv_be: d_forward / p.gain_forward + d_leak,
+            di_b_dv_be: d_base,
             di_b_dv_bc: d_reverse / p.gain_reverse + d_cutoff,
         }
     }

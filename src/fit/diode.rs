@@ -3,7 +3,7 @@
 //! Forward: V = n V_T ln(I / I_S) + I R, linear in n, n ln I_S and R; as many of them as there are rows.
 
 use super::transistor::arithmetic;
-use super::{Bound, DiodeLaw, Law, Model, Residual, SpreadAxis, row_text};
+use super::{Bound, DiodeLaw, Law, Model, SpreadAxis, bound, leakage, residuals, row_text, simulate};
 use crate::device::diode::Diode;
 use crate::device::{REFERENCE_TEMPERATURE, thermal_voltage};
 use crate::diagnostic::{Diagnostic, Diagnostics};
@@ -11,66 +11,70 @@ use crate::part::{Part, PartKind, Row, RowQuantity};
 
 /// What stands in where a record has no row; each use is noted.
 const EMISSION: f64 = 1.8;
-const E_FOLD: f64 = 10.0 / std::f64::consts::LN_2;
 /// Dynamic resistance of a Zener without a row, as a share of V_Z / I_Z.
 const SLOPE_SHARE: f64 = 0.02;
+/// Rounds in which an end of V_F settles, at most.
+const ROUNDS: usize = 20;
+/// Share of r_Z that the series resistance takes at most.
+const SERIES_SHARE: f64 = 0.5;
 
 pub(super) fn fit(part: &Part) -> Result<Model, Diagnostics> {
     let mut notes = Vec::new();
     let mut errors = Diagnostics::default();
     let mut nominal = forward(part, &mut notes, &mut errors);
     let zener = part.kind == PartKind::Zener;
-    let z_shift = if zener { breakdown(part, &mut nominal, &mut notes, &mut errors) } else { [None, None] };
-    let leak = leakage(part, &mut nominal, &mut notes);
+    let wanted = "I_R max at the working V_R and the highest T_j";
+    let leak = leakage::fit(part, RowQuantity::ReverseCurrent, wanted, &mut notes);
+    (nominal.leakage, nominal.leakage_e_fold) = (leak.nominal, leak.e_fold);
+    if zener {
+        breakdown(part, &mut nominal, &mut notes, &mut errors);
+    }
     if errors.has_errors() {
         return Err(errors);
     }
+    let z_shift = breakdown_ends(part, &nominal);
     let mut ends: [Option<(&Row, f64)>; 2] = [None, None];
     for row in part.rows_of(RowQuantity::ForwardVoltage) {
-        let Some(model) = row.at.i_f.map(|i_f| drop(&nominal, row.at.t_j, i_f)) else { continue };
+        let Some(model) = shown(&nominal, row) else { continue };
         let scale = row.at.t_j / REFERENCE_TEMPERATURE;
         widen(&mut ends, row, (row.min, row.max), |limit| (limit - model) / scale);
     }
-    // Far below the saturation current's own scale the closed form is no pure shift: a microvolt more stays outside.
-    for (end, outward) in ends.iter_mut().zip([-2e-6, 2e-6]) {
-        if let Some((_, shift)) = end {
-            *shift += outward;
-        }
-    }
     let value = |end: &Option<(&Row, f64)>| end.map_or(0.0, |(_, shift)| shift);
-    let law = DiodeLaw {
+    let mut law = DiodeLaw {
         nominal,
         v_f: [value(&ends[0]), value(&ends[1])],
-        leakage: [0.0, leak.map_or(1.0, |(_, factor)| factor)],
+        leakage: [0.0, leak.high],
         v_z: [value(&z_shift[0]), value(&z_shift[1])],
     };
+    settle_forward(part, &mut law);
     let first = part.rows_of(RowQuantity::ForwardVoltage).next();
     let at = first.map_or(String::new(), |row| format!(" at {}", row_text(row)));
-    let side = |end: Option<&Row>, wanted: String| match end {
-        Some(row) if row.source.origin.is_weak() => Bound::Weak { source: row.source.clone() },
-        Some(_) => Bound::Sourced,
-        None => Bound::Absent { wanted },
-    };
+    let side = |end: &Option<(&Row, f64)>, wanted: String| bound(end.iter().map(|(row, _)| *row), wanted);
     let mut axes = vec![
         SpreadAxis {
             name: "V_F".to_owned(),
-            low: side(ends[0].map(|(row, _)| row), format!("V_F min{at}")),
-            high: side(ends[1].map(|(row, _)| row), format!("V_F max{at}")),
+            low: side(&ends[0], format!("V_F min{at}")),
+            high: side(&ends[1], format!("V_F max{at}")),
         },
-        SpreadAxis {
-            name: "leakage".to_owned(),
-            low: Bound::Sourced,
-            high: side(leak.map(|(row, _)| row), "I_R max at the working V_R and the highest T_j".to_owned()),
-        },
+        // No device leaks less than nothing.
+        SpreadAxis { name: "leakage".to_owned(), low: Bound::Sourced, high: leak.bound },
     ];
     if zener {
         axes.push(SpreadAxis {
             name: "V_Z".to_owned(),
-            low: side(z_shift[0].map(|(row, _)| row), "V_Z min at the working current".to_owned()),
-            high: side(z_shift[1].map(|(row, _)| row), "V_Z max at the working current".to_owned()),
+            low: side(&z_shift[0], "V_Z min at the working current".to_owned()),
+            high: side(&z_shift[1], "V_Z max at the working current".to_owned()),
         });
     }
-    let residuals = part.rows.iter().filter_map(|row| residual(row, &law)).collect();
+    let residuals = residuals(part, |row| {
+        let axis = axis_of(row)?;
+        let value = |end: f64| {
+            let mut at = [0.0; super::AXES];
+            at[axis] = end;
+            shown(&law.specimen(&at), row)
+        };
+        Some((|| Some([value(-1.0)?, value(0.0)?, value(1.0)?]))())
+    })?;
     Ok(Model { part: part.name.clone(), law: Law::Diode(law), axes, residuals, notes })
 }
 
@@ -95,12 +99,44 @@ fn widen<'r>(
     }
 }
 
-/// Forward voltage (V) at a current, in closed form.
-fn drop(diode: &Diode, t_j: f64, i_f: f64) -> f64 {
-    let at = diode.at(t_j);
-    let p = &at.parameters;
-    p.emission_coefficient * at.thermal_voltage * libm::log1p(i_f / p.saturation_current)
-        + i_f * p.series_resistance
+/// Moves the ends of V_F further out until no row of V_F lies beyond them: where other currents than the junction's own flow
+/// (at the scale of the saturation current, or in a soft breakdown) a shift of the junction is not quite one of the diode.
+fn settle_forward(part: &Part, law: &mut DiodeLaw) {
+    for (k, sign) in [(0, -1.0), (1, 1.0)] {
+        for _ in 0..ROUNDS {
+            let specimen = law.specimen(&[sign, 0.0, 0.0, 0.0]);
+            let missing = part.rows_of(RowQuantity::ForwardVoltage).filter_map(|row| {
+                let limit = if sign < 0.0 { row.min } else { row.max };
+                Some(sign * (limit? - shown(&specimen, row)?) * REFERENCE_TEMPERATURE / row.at.t_j)
+            });
+            let most = missing.fold(0.0, f64::max);
+            if most <= 0.0 {
+                break;
+            }
+            law.v_f[k] += sign * (most + 1e-9);
+        }
+    }
+}
+
+/// The axis that a row feeds.
+fn axis_of(row: &Row) -> Option<usize> {
+    match row.quantity {
+        RowQuantity::ForwardVoltage => Some(0),
+        RowQuantity::ReverseCurrent => Some(1),
+        RowQuantity::ZenerVoltage => Some(2),
+        _ => None,
+    }
+}
+
+/// What a diode shows in the test condition of a row of V_F, V_Z (V) or I_R (A).
+fn shown(diode: &Diode, row: &Row) -> Option<f64> {
+    let at_current = |sign: f64| Some(sign * simulate::diode_voltage(diode, row.at.t_j, sign * row.at.i_f?)?);
+    match row.quantity {
+        RowQuantity::ForwardVoltage => at_current(1.0),
+        RowQuantity::ZenerVoltage => at_current(-1.0),
+        // So little current that the series resistance takes nothing.
+        _ => Some(-diode.at(row.at.t_j).current(-row.at.v_r?).0),
+    }
 }
 
 fn forward(part: &Part, notes: &mut Vec<String>, errors: &mut Diagnostics) -> Diode {
@@ -152,7 +188,7 @@ fn forward(part: &Part, notes: &mut Vec<String>, errors: &mut Diagnostics) -> Di
         emission_coefficient: emission,
         series_resistance: series,
         leakage: 0.0,
-        leakage_e_fold: E_FOLD,
+        leakage_e_fold: leakage::E_FOLD,
         breakdown_voltage: f64::INFINITY,
         breakdown_current: 1e-3,
         breakdown_slope: 1.0,
@@ -185,99 +221,68 @@ fn slope_and_series(points: &[(f64, f64)], v_t: f64) -> (f64, f64) {
     (emission, ((iv - emission * xi) / ii).max(0.0))
 }
 
-/// Zener voltage, slope and coefficient; gives the shifts of V_Z at its limits.
-fn breakdown<'p>(
-    part: &'p Part,
-    nominal: &mut Diode,
-    notes: &mut Vec<String>,
-    errors: &mut Diagnostics,
-) -> [Option<(&'p Row, f64)>; 2] {
+/// Breakdown voltage, slope and coefficient, such that the whole diode shows V_Z and r_Z: what its series resistance and its
+/// leakage take of them is taken off first.
+fn breakdown(part: &Part, nominal: &mut Diode, notes: &mut Vec<String>, errors: &mut Diagnostics) {
     let Some((row, i_z)) = part.rows_of(RowQuantity::ZenerVoltage).find_map(|row| Some((row, row.at.i_f?)))
     else {
         errors.push(
             Diagnostic::error(&part.place, format!("the record of {} has no row of V_Z", part.name))
                 .expected("a row such as `{V_Z: {min: 4.8 V, typ: 5.1 V, max: 5.4 V}, I_Z: 5 mA}`"),
         );
-        return [None, None];
-    };
-    nominal.breakdown_voltage = arithmetic(row);
-    nominal.breakdown_current = i_z;
-    let resistance = part
-        .rows_of(RowQuantity::ZenerResistance)
-        .find_map(|row| Some((row.at.i_f?, row.max.or(row.typ).or(row.min)?)));
-    nominal.breakdown_slope = match resistance {
-        Some((at, resistance)) => resistance * at,
-        None => {
-            notes.push("no row of r_Z: a fiftieth of V_Z / I_Z is assumed".to_owned());
-            SLOPE_SHARE * nominal.breakdown_voltage
-        }
+        return;
     };
     match part.rows_of(RowQuantity::ZenerTemperatureCoefficient).next() {
         Some(row) => nominal.breakdown_coefficient = arithmetic(row),
         None => notes.push("no row of TC_VZ: the Zener voltage does not drift in the model".to_owned()),
     }
+    let v_z = arithmetic(row);
+    let others = nominal.saturation_current + nominal.leakage;
+    if others >= i_z {
+        errors.push(Diagnostic::error(
+            &row.place,
+            "the rows of I_R and V_F leave no current to break down at this I_Z",
+        ));
+        return;
+    }
+    let resistance = part
+        .rows_of(RowQuantity::ZenerResistance)
+        .find_map(|row| Some((row.at.i_f?, row.max.or(row.typ).or(row.min)?)));
+    let (at, resistance) = resistance.unwrap_or_else(|| {
+        notes.push("no row of r_Z: a fiftieth of V_Z / I_Z is assumed".to_owned());
+        (i_z, SLOPE_SHARE * v_z / i_z)
+    });
+    if nominal.series_resistance > SERIES_SHARE * resistance {
+        nominal.series_resistance = SERIES_SHARE * resistance;
+        notes.push(
+            "the rows of V_F alone would show more series resistance than half of r_Z: half of r_Z is taken"
+                .to_owned(),
+        );
+    }
+    nominal.breakdown_current = i_z - others;
+    nominal.breakdown_voltage = v_z - i_z * nominal.series_resistance;
+    // Of the law scale (e^x - e^(-V_Z / slope)) the slope is that of scale e^x, which is hardly more than the current.
+    let inner = (resistance - nominal.series_resistance) * (at - others).max(0.1 * at);
+    nominal.breakdown_slope = inner;
+    for _ in 0..20 {
+        let left = libm::exp(-nominal.breakdown_voltage / nominal.breakdown_slope);
+        let scale = nominal.breakdown_current / (1.0 - left);
+        nominal.breakdown_slope = inner + (resistance - nominal.series_resistance) * scale * left;
+    }
+    if !(nominal.breakdown_slope > 0.0 && nominal.breakdown_slope < nominal.breakdown_voltage) {
+        errors.push(Diagnostic::error(
+            &row.place,
+            "the rows of r_Z and V_Z contradict each other: r_Z I_Z exceeds V_Z",
+        ));
+    }
+}
+
+/// The shifts of V_Z at its limits.
+fn breakdown_ends<'p>(part: &'p Part, nominal: &Diode) -> [Option<(&'p Row, f64)>; 2] {
     let mut ends = [None, None];
     for row in part.rows_of(RowQuantity::ZenerVoltage) {
-        let Some(i) = row.at.i_f else { continue };
-        let model = zener_voltage(nominal, row.at.t_j, i);
+        let Some(model) = shown(nominal, row) else { continue };
         widen(&mut ends, row, (row.min, row.max), |limit| limit - model);
     }
     ends
-}
-
-/// Zener voltage (V) at a reverse current.
-fn zener_voltage(diode: &Diode, t_j: f64, i_z: f64) -> f64 {
-    let p = diode.at(t_j).parameters;
-    p.breakdown_voltage + p.breakdown_slope * libm::log(i_z / p.breakdown_current) + i_z * p.series_resistance
-        - p.breakdown_current * p.series_resistance
-}
-
-/// The leakage element; gives the deciding row and the factor at the high end of its axis.
-fn leakage<'p>(part: &'p Part, nominal: &mut Diode, notes: &mut Vec<String>) -> Option<(&'p Row, f64)> {
-    let limits: Vec<(&Row, f64)> =
-        part.rows_of(RowQuantity::ReverseCurrent).filter_map(|row| Some((row, row.max?))).collect();
-    let coolest = limits.iter().min_by(|a, b| a.0.at.t_j.total_cmp(&b.0.at.t_j))?;
-    let hottest = limits.iter().max_by(|a, b| a.0.at.t_j.total_cmp(&b.0.at.t_j))?;
-    if hottest.0.at.t_j - coolest.0.at.t_j > 1.0 && hottest.1 > coolest.1 {
-        nominal.leakage_e_fold = (hottest.0.at.t_j - coolest.0.at.t_j) / libm::log(hottest.1 / coolest.1);
-    } else {
-        notes.push("one temperature of I_R: it doubles per 10 K (common practice)".to_owned());
-    }
-    let at_reference =
-        |value: f64, t_j: f64| value * libm::exp(-(t_j - REFERENCE_TEMPERATURE) / nominal.leakage_e_fold);
-    let deciding = limits
-        .iter()
-        .map(|(row, max)| (*row, at_reference(*max, row.at.t_j)))
-        .max_by(|a, b| a.1.total_cmp(&b.1))?;
-    let typical =
-        part.rows_of(RowQuantity::ReverseCurrent).find_map(|row| Some(at_reference(row.typ?, row.at.t_j)));
-    nominal.leakage = typical.unwrap_or(deciding.1 / 10.0);
-    Some((deciding.0, (deciding.1 / nominal.leakage).max(1.0)))
-}
-
-fn residual(row: &Row, law: &DiodeLaw) -> Option<Residual> {
-    let axis = match row.quantity {
-        RowQuantity::ForwardVoltage => 0,
-        RowQuantity::ReverseCurrent => 1,
-        RowQuantity::ZenerVoltage => 2,
-        _ => return None,
-    };
-    let value = |end: f64| -> Option<f64> {
-        let mut at = [0.0; super::AXES];
-        at[axis] = end;
-        let diode = law.specimen(&at);
-        Some(match row.quantity {
-            RowQuantity::ForwardVoltage => drop(&diode, row.at.t_j, row.at.i_f?),
-            RowQuantity::ZenerVoltage => zener_voltage(&diode, row.at.t_j, row.at.i_f?),
-            _ => diode.at(row.at.t_j).parameters.leakage,
-        })
-    };
-    Some(Residual {
-        quantity: row.quantity,
-        at: row_text(row),
-        min: row.min,
-        typ: row.typ,
-        max: row.max,
-        model: [value(-1.0)?, value(0.0)?, value(1.0)?],
-    })
 }

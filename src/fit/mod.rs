@@ -3,12 +3,16 @@
 //! The typical column gives the nominal curve; the limits give one-sided spread axes: in every row's own test condition the
 //! end of an axis reaches the row's limit or lies outside it.
 
+mod axes;
+mod check;
 mod diode;
+mod leakage;
 pub mod simulate;
 mod transistor;
 
 use serde::{Deserialize, Serialize};
 
+use crate::device::curve::Curve;
 use crate::device::diode::Diode;
 use crate::device::transistor::Transistor;
 use crate::diagnostic::{Diagnostic, Diagnostics};
@@ -58,6 +62,7 @@ pub struct Residual {
 /// The law of a device with its spread.
 #[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
 #[serde(tag = "law", rename_all = "kebab-case")]
+#[expect(clippy::large_enum_variant, reason = "one a part: nothing is gained by a box")]
 pub enum Law {
     Transistor(TransistorLaw),
     Diode(DiodeLaw),
@@ -67,8 +72,8 @@ pub enum Law {
 #[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
 pub struct TransistorLaw {
     pub nominal: Transistor,
-    /// Factor on the current gain at coordinate -1 and 1 (base-current terms; I_C against V_BE is kept).
-    pub gain: [f64; 2],
+    /// Current gain at coordinate -1 and 1 (base-current terms; I_C against V_BE is kept).
+    pub gain: [GainEnd; 2],
     /// Shift of V_BE (V) at coordinate -1 and 1 (transport and base current together; the gain is kept).
     pub v_be: [f64; 2],
     /// Base resistance (Ω) at coordinate -1 and 1 of the V_BE axis: what V_BE(sat) rows ask for beyond the shift.
@@ -81,6 +86,15 @@ pub struct TransistorLaw {
     /// (I_C, forced gain) up to which a maximum row of V_CE(sat) covers saturation, with that maximum (V): results that
     /// use V_CE in saturation beyond all of these are not shown.
     pub saturation_cover: Vec<SaturationRow>,
+}
+
+/// How far the gain at one end of its axis lies from the nominal curve: logarithms of factors that multiply.
+#[derive(Clone, Copy, PartialEq, Debug, Default, Serialize, Deserialize)]
+pub struct GainEnd {
+    /// Over the logarithm of the emitter junction's exponential current (A): what the limits at 25 °C ask for.
+    pub over_current: Curve,
+    /// Over the logarithm of T / 25 °C: what limits at other temperatures ask for beyond that.
+    pub over_temperature: Curve,
 }
 
 /// A maximum row of V_CE(sat) or V_BE(sat).
@@ -117,13 +131,61 @@ pub struct Model {
 /// Fits the model of a transistor, diode or Zener to its record.
 ///
 /// # Errors
-/// Rows that are missing or contradict each other, at their place; a part that is no junction device.
+/// Rows that are missing or contradict each other, at their place; a row of which the model misses a limit on the inside in
+/// the row's own test condition; a part that is no junction device.
 pub fn fit(part: &Part) -> Result<Model, Diagnostics> {
+    let mut errors = Diagnostics::default();
+    check::contradictions(part, &mut errors);
+    if errors.has_errors() {
+        return Err(errors);
+    }
     match part.kind {
         PartKind::Npn | PartKind::Pnp => transistor::fit(part),
         PartKind::Diode | PartKind::Zener => diode::fit(part),
         _ => Err(Diagnostic::error(&part.place, format!("{} has no junction to fit", part.name)).into()),
     }
+}
+
+/// What bounds a side on which `rows` decide: any weak one among them makes it weak; without any it is open.
+fn bound<'r>(rows: impl Iterator<Item = &'r Row>, wanted: impl Into<String>) -> Bound {
+    let mut bound = Bound::Absent { wanted: wanted.into() };
+    for row in rows {
+        if row.source.origin.is_weak() {
+            return Bound::Weak { source: row.source.clone() };
+        }
+        bound = Bound::Sourced;
+    }
+    bound
+}
+
+/// Each row that feeds an axis beside what `values` gives in its test condition at the low end, nominal and at the high end.
+///
+/// # Errors
+/// A row whose bias the model cannot reach, or of which it misses a limit on the inside.
+fn residuals(
+    part: &Part,
+    values: impl Fn(&Row) -> Option<Option<[f64; 3]>>,
+) -> Result<Vec<Residual>, Diagnostics> {
+    let mut errors = Diagnostics::default();
+    let mut all = Vec::new();
+    for row in &part.rows {
+        let Some(model) = values(row) else { continue };
+        let Some(model) = model else {
+            check::unreachable(row, &mut errors);
+            continue;
+        };
+        let residual = Residual {
+            quantity: row.quantity,
+            at: row_text(row),
+            min: row.min,
+            typ: row.typ,
+            max: row.max,
+            model,
+        };
+        check::kept(row, &residual, &mut errors);
+        all.push(residual);
+    }
+    if errors.has_errors() { Err(errors) } else { Ok(all) }
 }
 
 /// A row's test condition as printed: `I_C = 150 mA, V_CE = 1 V, T_j = 25 °C`.
@@ -166,7 +228,7 @@ impl TransistorLaw {
         use crate::device::{REFERENCE_TEMPERATURE, thermal_voltage};
         let nominal = &self.nominal;
         let [gain, v_be, saturation, leakage] = *at;
-        let gain = between_log(self.gain, gain);
+        let end = &self.gain[usize::from(gain > 0.0)];
         let shift = between(self.v_be, v_be);
         let v_t = thermal_voltage(REFERENCE_TEMPERATURE);
         let main = libm::exp(-shift / (nominal.emission_coefficient * v_t));
@@ -174,8 +236,9 @@ impl TransistorLaw {
         let resistance = from_nominal(nominal.collector_resistance, self.collector_resistance, saturation);
         Transistor {
             saturation_current: nominal.saturation_current * main,
-            gain_forward: nominal.gain_forward * gain,
-            emitter_leakage: nominal.emitter_leakage * side / gain,
+            gain_over_current: end.over_current.times(gain.abs()),
+            gain_over_temperature: end.over_temperature.times(gain.abs()),
+            emitter_leakage: nominal.emitter_leakage * side,
             base_resistance: from_nominal(nominal.base_resistance, self.base_resistance, v_be),
             collector_resistance: resistance,
             gain_reverse: from_nominal(nominal.gain_reverse, self.gain_reverse, saturation),
@@ -204,11 +267,6 @@ impl DiodeLaw {
 /// Straight line from the end at -1 over 0 at 0 to the end at 1.
 fn between(ends: [f64; 2], at: f64) -> f64 {
     from_nominal(0.0, ends, at)
-}
-
-/// Straight line in the logarithm from the factor at -1 over 1 at 0 to the factor at 1.
-fn between_log(ends: [f64; 2], at: f64) -> f64 {
-    libm::pow(if at < 0.0 { ends[0] } else { ends[1] }, at.abs())
 }
 
 /// Straight line from the end at -1 over `nominal` at 0 to the end at 1.

@@ -10,8 +10,11 @@
 //! with the base-emitter recombination current (emission coefficient 2) in the last term: linear in three non-negative
 //! coefficients, which least squares of the relative deviations finds exactly.
 
-use super::simulate::{self, AtBias};
-use super::{Bound, Law, Model, Residual, SaturationRow, SpreadAxis, TransistorLaw, row_text};
+use super::leakage::{self, Leakage};
+use super::{
+    Bound, GainEnd, Law, Model, SaturationRow, SpreadAxis, TransistorLaw, axes, residuals, simulate,
+};
+use crate::device::curve::Curve;
 use crate::device::transistor::Transistor;
 use crate::device::{REFERENCE_TEMPERATURE, thermal_voltage};
 use crate::diagnostic::{Diagnostic, Diagnostics};
@@ -21,14 +24,10 @@ use crate::part::{Part, Row, RowQuantity};
 const EARLY_VOLTAGE: f64 = 100.0;
 const REVERSE_GAIN: f64 = 3.0;
 const GAIN_EXPONENT: f64 = 1.5;
-/// No specimen is taken to have less reverse gain than this.
-const LEAST_REVERSE_GAIN: f64 = 0.02;
-/// Ten kelvin double the cut-off current (common practice).
-const CUTOFF_E_FOLD: f64 = 10.0 / std::f64::consts::LN_2;
+/// Rounds in which the knee current in the third column of the gain curve settles, at most.
+const ROUNDS: usize = 60;
 const ENERGY_GAP: f64 = 1.12;
 const SATURATION_EXPONENT: f64 = 3.0;
-/// A specimen whose gain differs from the typical curve by more than this factor speaks of contradictory rows.
-const WIDEST_GAIN: f64 = 12.0;
 
 pub(super) fn fit(part: &Part) -> Result<Model, Diagnostics> {
     let mut notes = Vec::new();
@@ -40,27 +39,28 @@ pub(super) fn fit(part: &Part) -> Result<Model, Diagnostics> {
     saturation_current(part, &mut nominal, &mut notes, &mut errors);
     base_resistance(part, &mut nominal);
     saturation(part, &mut nominal, &mut notes);
-    let leakage = cutoff(part, &mut nominal, &mut notes);
+    let leak = cutoff(part, &mut nominal, &mut notes);
     let mut law = TransistorLaw {
         nominal,
-        gain: [1.0, 1.0],
+        gain: [GainEnd::default(); 2],
         v_be: [0.0, 0.0],
         base_resistance: [nominal.base_resistance; 2],
         collector_resistance: [0.0, nominal.collector_resistance],
         gain_reverse: [nominal.gain_reverse; 2],
-        leakage: [0.0, leakage],
+        leakage: [0.0, leak.high],
         saturation_cover: cover(part),
     };
     let axes = vec![
-        gain_axis(part, &mut law, &mut errors),
-        v_be_axis(part, &mut law),
-        saturation_axis(part, &mut law, &mut errors),
-        leakage_axis(part),
+        axes::gain(part, &mut law, &mut errors),
+        axes::v_be(part, &mut law),
+        axes::saturation(part, &mut law, &mut notes, &mut errors),
+        // No device leaks less than nothing.
+        SpreadAxis { name: "leakage".to_owned(), low: Bound::Sourced, high: leak.bound },
     ];
     if errors.has_errors() {
         return Err(errors);
     }
-    let residuals = part.rows.iter().filter_map(|row| residual(row, &law)).collect();
+    let residuals = residuals(part, |row| axes::ends(row, &law))?;
     Ok(Model { part: part.name.clone(), law: Law::Transistor(law), axes, residuals, notes })
 }
 
@@ -95,7 +95,7 @@ fn typical_with_both(row: &Row) -> Option<f64> {
     row.typ.or_else(|| Some((row.min? * row.max?).sqrt()))
 }
 
-fn is_cool(row: &Row) -> bool {
+pub(super) fn is_cool(row: &Row) -> bool {
     (row.at.t_j - REFERENCE_TEMPERATURE).abs() < 0.6
 }
 
@@ -158,10 +158,12 @@ fn gain_curve(part: &Part, notes: &mut Vec<String>, errors: &mut Diagnostics) ->
         collector_resistance: 0.0,
         emitter_resistance: 0.0,
         cutoff_current: 0.0,
-        cutoff_e_fold: CUTOFF_E_FOLD,
+        cutoff_e_fold: leakage::E_FOLD,
         energy_gap: ENERGY_GAP,
         saturation_exponent: SATURATION_EXPONENT,
         gain_exponent,
+        gain_over_current: Curve::ZERO,
+        gain_over_temperature: Curve::ZERO,
     }
 }
 
@@ -169,7 +171,7 @@ fn gain_curve(part: &Part, notes: &mut Vec<String>, errors: &mut Diagnostics) ->
 fn curve(points: &[(f64, f64)]) -> [f64; 3] {
     let mut knee = f64::INFINITY;
     let mut best = [0.0; 3];
-    for _ in 0..4 {
+    for _ in 0..ROUNDS {
         let columns = |i: f64| [1.0, i, (1.0 + i / knee).sqrt() / i.sqrt()];
         let mut found: Option<(f64, [f64; 3])> = None;
         // Every set of coefficients that may differ from zero, small sets first; more only where they help.
@@ -195,7 +197,11 @@ fn curve(points: &[(f64, f64)]) -> [f64; 3] {
         }
         let Some((_, solution)) = found else { break };
         best = solution;
+        let last = knee;
         knee = if best[1] > 0.0 { best[0] / best[1] } else { f64::INFINITY };
+        if knee == last || (knee / last - 1.0).abs() < 1e-12 {
+            break;
+        }
     }
     best
 }
@@ -338,16 +344,6 @@ fn base_resistance(part: &Part, nominal: &mut Transistor) {
     }
 }
 
-fn forced(transistor: &Transistor, row: &Row) -> Option<AtBias> {
-    simulate::forced(transistor, row.at.t_j, row.at.i_c?, row.at.i_b?)
-}
-
-/// The collector resistance at which a row's V_CE(sat) is `wanted`; zero where the junctions alone give more.
-fn resistance_for(transistor: &Transistor, row: &Row, wanted: f64) -> Option<f64> {
-    let bare = Transistor { collector_resistance: 0.0, ..*transistor };
-    Some(((wanted - forced(&bare, row)?.v_ce) / row.at.i_c?).max(0.0))
-}
-
 /// Collector resistance from the rows of V_CE(sat).
 fn saturation(part: &Part, nominal: &mut Transistor, notes: &mut Vec<String>) {
     let rows: Vec<&Row> =
@@ -363,7 +359,7 @@ fn saturation(part: &Part, nominal: &mut Transistor, notes: &mut Vec<String>) {
     let (mut sum, mut weight) = (0.0, 0.0);
     for row in rows {
         if let (Some(resistance), Some(i_c)) =
-            (resistance_for(nominal, row, typical(row, of_min, of_max)), row.at.i_c)
+            (axes::resistance_for(nominal, row, typical(row, of_min, of_max)), row.at.i_c)
         {
             sum += resistance * i_c;
             weight += i_c;
@@ -377,33 +373,15 @@ fn saturation(part: &Part, nominal: &mut Transistor, notes: &mut Vec<String>) {
     ));
 }
 
-/// The cut-off element; gives the factor on it at the high end of the leakage axis.
-fn cutoff(part: &Part, nominal: &mut Transistor, notes: &mut Vec<String>) -> f64 {
-    let rows: Vec<&Row> = part.rows_of(RowQuantity::CollectorCutoff).collect();
-    let limits: Vec<(f64, f64)> = rows.iter().filter_map(|row| Some((row.at.t_j, row.max?))).collect();
-    let Some(first) = rows.first() else {
+/// The cut-off element.
+fn cutoff(part: &Part, nominal: &mut Transistor, notes: &mut Vec<String>) -> Leakage {
+    if part.rows_of(RowQuantity::CollectorCutoff).next().is_none() {
         notes.push("no row of I_CBO: what an off transistor leaks is not known".to_owned());
-        return 0.0;
-    };
-    let coolest = limits.iter().copied().min_by(|a, b| a.0.total_cmp(&b.0));
-    let hottest = limits.iter().copied().max_by(|a, b| a.0.total_cmp(&b.0));
-    match coolest.zip(hottest) {
-        Some((cool, hot)) if hot.0 - cool.0 > 1.0 && hot.1 > cool.1 => {
-            nominal.cutoff_e_fold = (hot.0 - cool.0) / libm::log(hot.1 / cool.1);
-        }
-        _ => notes.push("one temperature of I_CBO: it doubles per 10 K (common practice)".to_owned()),
     }
-    let at_reference =
-        |value: f64, t_j: f64| value * libm::exp(-(t_j - REFERENCE_TEMPERATURE) / nominal.cutoff_e_fold);
-    let typical = rows.iter().find_map(|row| Some(at_reference(row.typ?, row.at.t_j)));
-    let highest = limits.iter().map(|(t_j, max)| at_reference(*max, *t_j)).fold(0.0, f64::max);
-    nominal.cutoff_current = match typical {
-        Some(typical) => typical,
-        // Without a typical value the curve starts a decade below the limit.
-        None if highest > 0.0 => highest / 10.0,
-        None => at_reference(arithmetic(first), first.at.t_j),
-    };
-    if highest > 0.0 { (highest / nominal.cutoff_current).max(1.0) } else { 1.0 }
+    let wanted = "I_CBO max at the working V_CB and the highest T_j";
+    let leak = leakage::fit(part, RowQuantity::CollectorCutoff, wanted, notes);
+    (nominal.cutoff_current, nominal.cutoff_e_fold) = (leak.nominal, leak.e_fold);
+    leak
 }
 
 fn cover(part: &Part) -> Vec<SaturationRow> {
@@ -413,215 +391,4 @@ fn cover(part: &Part) -> Vec<SaturationRow> {
             Some(SaturationRow { i_c, forced_gain: i_c / i_b, v_ce_max: row.max? })
         })
         .collect()
-}
-
-/// What bounds a side: the rows that reach it decide; any weak one among them makes it weak.
-fn bound(deciding: Option<&Row>, wanted: String) -> Bound {
-    match deciding {
-        Some(row) if row.source.origin.is_weak() => Bound::Weak { source: row.source.clone() },
-        Some(_) => Bound::Sourced,
-        None => Bound::Absent { wanted },
-    }
-}
-
-fn gain_axis(part: &Part, law: &mut TransistorLaw, errors: &mut Diagnostics) -> SpreadAxis {
-    let mut ends: [Option<(&Row, f64)>; 2] = [None, None];
-    for row in part.rows_of(RowQuantity::CurrentGain) {
-        let (Some(i_c), Some(v_ce)) = (row.at.i_c, row.at.v_ce) else { continue };
-        let Some(model) = simulate::active(&law.nominal, row.at.t_j, i_c, v_ce).map(|at| i_c / at.i_b) else {
-            errors.push(Diagnostic::error(&row.place, "the fitted model cannot reach this row's bias"));
-            continue;
-        };
-        // The gain scales with the factor, so that one division reaches the limit; a hair more stays on the unsafe side.
-        if let Some(min) = row.min {
-            let factor = (min / model * (1.0 - 1e-9)).min(1.0);
-            if ends[0].is_none_or(|(_, least)| factor < least) {
-                ends[0] = Some((row, factor));
-            }
-        }
-        if let Some(max) = row.max {
-            let factor = (max / model * (1.0 + 1e-9)).max(1.0);
-            if ends[1].is_none_or(|(_, most)| factor > most) {
-                ends[1] = Some((row, factor));
-            }
-        }
-    }
-    for (end, row) in ends.iter().flatten().map(|(row, factor)| (*factor, *row)) {
-        if !(1.0 / WIDEST_GAIN..=WIDEST_GAIN).contains(&end) {
-            errors.push(
-                Diagnostic::error(
-                    &row.place,
-                    "the rows of h_FE contradict each other: no one curve with one spread meets them",
-                )
-                .expected("rows of one gain group, with typical values where the sheet gives them"),
-            );
-        }
-    }
-    law.gain = [ends[0].map_or(1.0, |(_, factor)| factor), ends[1].map_or(1.0, |(_, factor)| factor)];
-    let first = part.rows_of(RowQuantity::CurrentGain).next();
-    let wanted = |which: &str| {
-        first.map_or_else(|| format!("h_FE {which}"), |row| format!("h_FE {which} at {}", row_text(row)))
-    };
-    SpreadAxis {
-        name: "gain".to_owned(),
-        low: bound(ends[0].map(|(row, _)| row), wanted("min")),
-        high: bound(ends[1].map(|(row, _)| row), wanted("max")),
-    }
-}
-
-/// V_BE of a row in the nominal model.
-fn v_be_of(transistor: &Transistor, row: &Row) -> Option<f64> {
-    match row.quantity {
-        RowQuantity::BaseEmitterVoltage => {
-            simulate::active(transistor, row.at.t_j, row.at.i_c?, row.at.v_ce?).map(|at| at.v_be)
-        }
-        RowQuantity::BaseEmitterSaturation => forced(transistor, row).map(|at| at.v_be),
-        _ => None,
-    }
-}
-
-fn v_be_axis(part: &Part, law: &mut TransistorLaw) -> SpreadAxis {
-    let mut ends: [Option<(&Row, f64)>; 2] = [None, None];
-    let rows = part.rows.iter().filter(|row| {
-        matches!(row.quantity, RowQuantity::BaseEmitterVoltage | RowQuantity::BaseEmitterSaturation)
-    });
-    let has_on = part.rows_of(RowQuantity::BaseEmitterVoltage).any(|row| row.max.is_some());
-    for row in rows.clone() {
-        if row.quantity == RowQuantity::BaseEmitterSaturation && has_on {
-            continue;
-        }
-        let Some(model) = v_be_of(&law.nominal, row) else { continue };
-        // A shift at the reference temperature acts in proportion to the temperature elsewhere.
-        let scale = row.at.t_j / REFERENCE_TEMPERATURE;
-        if let Some(min) = row.min {
-            let shift = ((min - model) / scale - 1e-9).min(0.0);
-            if ends[0].is_none_or(|(_, least)| shift < least) {
-                ends[0] = Some((row, shift));
-            }
-        }
-        if let Some(max) = row.max {
-            let shift = ((max - model) / scale + 1e-9).max(0.0);
-            if ends[1].is_none_or(|(_, most)| shift > most) {
-                ends[1] = Some((row, shift));
-            }
-        }
-    }
-    law.v_be = [ends[0].map_or(0.0, |(_, shift)| shift), ends[1].map_or(0.0, |(_, shift)| shift)];
-    // What the rows of V_BE(sat) ask for beyond that is the base resistance's.
-    let mut shifted = law.specimen(&[0.0, 1.0, 0.0, 0.0]);
-    for row in part.rows_of(RowQuantity::BaseEmitterSaturation) {
-        if let (Some(max), Some(i_b), Some(at)) = (row.max, row.at.i_b, forced(&shifted, row)) {
-            shifted.base_resistance += ((max * (1.0 + 1e-9) - at.v_be) / i_b).max(0.0);
-        }
-    }
-    law.base_resistance = [law.nominal.base_resistance, shifted.base_resistance];
-    let first = rows.clone().next();
-    let wanted = |which: &str| {
-        first.map_or_else(
-            || format!("V_BE {which} at the working current"),
-            |row| format!("{} {which} at {}", row.quantity.symbol(), row_text(row)),
-        )
-    };
-    SpreadAxis {
-        name: "V_BE".to_owned(),
-        low: bound(ends[0].map(|(row, _)| row), wanted("min")),
-        high: bound(ends[1].map(|(row, _)| row), wanted("max")),
-    }
-}
-
-fn saturation_axis(part: &Part, law: &mut TransistorLaw, errors: &mut Diagnostics) -> SpreadAxis {
-    let mut limits: Vec<(&Row, f64)> = part
-        .rows_of(RowQuantity::CollectorEmitterSaturation)
-        .filter_map(|row| Some((row, row.max? * (1.0 + 1e-9))))
-        .collect();
-    limits.sort_by(|a, b| a.0.at.i_c.unwrap_or(0.0).total_cmp(&b.0.at.i_c.unwrap_or(0.0)));
-    for (row, _) in &limits {
-        if forced(&law.nominal, row).is_none() {
-            errors.push(
-                Diagnostic::error(&row.place, "the fitted model cannot carry this row's I_C with its I_B")
-                    .expected("a forced gain I_C/I_B below the gain that the rows of h_FE give"),
-            );
-        }
-    }
-    // At high current the resistance speaks, at low current the reverse gain: the row at the highest current sets the one,
-    // the others lower the other as far as they need, and what is still missing goes to the resistance.
-    let mut worst = law.nominal;
-    let needs = |worst: &Transistor, row: &Row, max: f64| resistance_for(worst, row, max).unwrap_or(0.0);
-    if let Some((top, others)) = limits.split_last() {
-        for _ in 0..2 {
-            worst.collector_resistance = needs(&worst, top.0, top.1).max(law.nominal.collector_resistance);
-            for (row, max) in others {
-                worst.gain_reverse = reverse_gain_for(&worst, row, *max).min(worst.gain_reverse);
-            }
-        }
-        let most = limits.iter().map(|(row, max)| needs(&worst, row, *max)).fold(0.0, f64::max);
-        worst.collector_resistance = most.max(law.nominal.collector_resistance);
-    }
-    law.gain_reverse = [law.nominal.gain_reverse, worst.gain_reverse];
-    let most = worst.collector_resistance;
-    let deciding = limits.iter().map(|(row, _)| *row).find(|row| row.source.origin.is_weak());
-    let deciding = deciding.or_else(|| limits.first().map(|(row, _)| *row));
-    // Nothing keeps less than the junctions alone.
-    law.collector_resistance = [0.0, most];
-    let current = part
-        .rows_of(RowQuantity::CurrentGain)
-        .filter_map(|row| row.at.i_c)
-        .fold(None, |most: Option<f64>, i_c| Some(most.map_or(i_c, |most| most.max(i_c))));
-    let at = current.map_or(String::new(), |i_c| format!(" (I_C up to {})", super::current_text(i_c)));
-    SpreadAxis {
-        name: "saturation".to_owned(),
-        low: Bound::Sourced,
-        high: bound(deciding, format!("V_CE(sat) max at or above the working I_C and I_C/I_B{at}")),
-    }
-}
-
-/// The reverse gain, from [`LEAST_REVERSE_GAIN`] to the device's own, at which a row's V_CE(sat) comes nearest to `wanted`.
-fn reverse_gain_for(transistor: &Transistor, row: &Row, wanted: f64) -> f64 {
-    let own = transistor.gain_reverse;
-    let (Some(i_c), Some(i_b)) = (row.at.i_c, row.at.i_b) else { return own };
-    let found = simulate::reverse_gain_at(transistor, row.at.t_j, i_c, i_b, wanted);
-    found.map_or(own, |gain| gain.max(LEAST_REVERSE_GAIN).min(own))
-}
-
-fn leakage_axis(part: &Part) -> SpreadAxis {
-    let deciding = part.rows_of(RowQuantity::CollectorCutoff).find(|row| row.max.is_some());
-    SpreadAxis {
-        name: "leakage".to_owned(),
-        // No device leaks less than nothing.
-        low: Bound::Sourced,
-        high: bound(deciding, "I_CBO max at the working V_CB and the highest T_j".to_owned()),
-    }
-}
-
-/// A row beside what the model gives in its own test condition at the low end, nominal and at the high end of its axis.
-fn residual(row: &Row, law: &TransistorLaw) -> Option<Residual> {
-    let axis = match row.quantity {
-        RowQuantity::CurrentGain => 0,
-        RowQuantity::BaseEmitterVoltage | RowQuantity::BaseEmitterSaturation => 1,
-        RowQuantity::CollectorEmitterSaturation => 2,
-        RowQuantity::CollectorCutoff => 3,
-        _ => return None,
-    };
-    let value = |end: f64| -> Option<f64> {
-        let mut at = [0.0; super::AXES];
-        at[axis] = end;
-        let transistor = law.specimen(&at);
-        match row.quantity {
-            RowQuantity::CurrentGain => {
-                let i_c = row.at.i_c?;
-                simulate::active(&transistor, row.at.t_j, i_c, row.at.v_ce?).map(|at| i_c / at.i_b)
-            }
-            RowQuantity::CollectorEmitterSaturation => forced(&transistor, row).map(|at| at.v_ce),
-            RowQuantity::CollectorCutoff => Some(transistor.at(row.at.t_j).parameters.cutoff_current),
-            _ => v_be_of(&transistor, row),
-        }
-    };
-    Some(Residual {
-        quantity: row.quantity,
-        at: row_text(row),
-        min: row.min,
-        typ: row.typ,
-        max: row.max,
-        model: [value(-1.0)?, value(0.0)?, value(1.0)?],
-    })
 }

@@ -19,6 +19,7 @@ pub(super) struct Device {
 }
 
 #[derive(Clone, Copy, Debug)]
+#[expect(clippy::large_enum_variant, reason = "a box would cost an allocation an element and step")]
 pub(super) enum Law {
     /// In state open: no current.
     Open,

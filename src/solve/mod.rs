@@ -35,6 +35,7 @@ use crate::device::{diode, transistor};
 
 /// What the solver needs to know of one element at one point of the declared space; SI units.
 #[derive(Clone, Copy, PartialEq, Debug)]
+#[expect(clippy::large_enum_variant, reason = "a box would cost an allocation an element and point")]
 pub enum Branch {
     /// Resistor, filament, coil (hot or cold): resistance (Ω); 0 is a short.
     Resistor {

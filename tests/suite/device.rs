@@ -1,6 +1,7 @@
 //! Device equations: against mpmath (tests/reference/device_currents.py), derivatives against differences, temperature laws,
 //! and what the trade expects of silicon.
 
+use qsheaf::device::curve::Curve;
 use qsheaf::device::diode::{self, Diode};
 use qsheaf::device::transistor::{self, Transistor};
 use qsheaf::device::{BOLTZMANN, ELEMENTARY_CHARGE, REFERENCE_TEMPERATURE, thermal_voltage};
@@ -24,6 +25,8 @@ const FULL: Transistor = Transistor {
     energy_gap: 1.12,
     saturation_exponent: 3.0,
     gain_exponent: 1.5,
+    gain_over_current: Curve::ZERO,
+    gain_over_temperature: Curve::ZERO,
 };
 
 /// The same without anything beyond Ebers and Moll.
@@ -36,6 +39,17 @@ const PLAIN: Transistor = Transistor {
     cutoff_current: 0.0,
     ..FULL
 };
+
+/// A specimen whose gain leaves the common law over current and temperature.
+fn bent() -> Transistor {
+    let over = |points: &[[f64; 2]]| Curve::through(points).unwrap();
+    Transistor {
+        early_voltage_reverse: f64::INFINITY,
+        gain_over_current: over(&[[-9.0, -0.4], [-6.5, -0.7], [-3.0, -0.3], [-1.0, -0.9]]),
+        gain_over_temperature: over(&[[-0.3, -0.5], [0.0, 0.0], [0.2, 0.1]]),
+        ..FULL
+    }
+}
 
 const ZENER: Diode = Diode {
     saturation_current: 1e-14,
@@ -166,7 +180,8 @@ const ACROSS: [f64; 20] = [
 
 #[test]
 fn transistor_derivatives_agree_with_differences() {
-    for device in [PLAIN, FULL, Transistor { early_voltage_reverse: 1.5, knee_current_forward: 1e-3, ..FULL }]
+    for device in
+        [PLAIN, FULL, bent(), Transistor { early_voltage_reverse: 1.5, knee_current_forward: 1e-3, ..FULL }]
     {
         for t in TEMPERATURES {
             let at = device.at(t);
@@ -230,7 +245,7 @@ fn nothing_overflows_up_to_a_kilovolt() {
     for t in [150.0, 298.15, 700.0] {
         for v_be in (-1000..=1000).step_by(40).map(f64::from) {
             for v_bc in (-1000..=1000).step_by(40).map(f64::from) {
-                for device in [PLAIN, FULL, odd] {
+                for device in [PLAIN, FULL, bent(), odd] {
                     let now = device.at(t).currents(v_be, v_bc);
                     let all =
                         [now.i_c, now.i_b, now.di_c_dv_be, now.di_c_dv_bc, now.di_b_dv_be, now.di_b_dv_bc];
@@ -264,7 +279,7 @@ fn diodes_are_passive_even_with_soft_breakdown() {
 /// The power into a transistor is never negative: a device without sources gives nothing.
 #[test]
 fn transistors_are_passive() {
-    for device in [PLAIN, FULL] {
+    for device in [PLAIN, FULL, bent()] {
         for t in TEMPERATURES {
             let at = device.at(t);
             for v_be in ACROSS {
@@ -375,4 +390,39 @@ fn knee_current_bends_the_transport_current() {
 fn thermal_voltage_from_exact_constants() {
     assert_eq!((BOLTZMANN, ELEMENTARY_CHARGE), (1.380_649e-23, 1.602_176_634e-19));
     assert!((thermal_voltage(300.0) - 25.851_999_786e-3).abs() < 1e-11);
+}
+
+/// Through its points, between neighbours elsewhere, level beyond the outermost, without a jump in value or slope.
+#[test]
+fn curves_go_through_their_points_without_overshoot() {
+    let points = [[-2.0, 1.0], [-1.5, 3.0], [0.0, 3.5], [0.3, 0.2], [2.0, 0.2], [2.1, 5.0], [4.0, 4.0]];
+    let curve = Curve::through(&points).unwrap();
+    for [at, value] in points {
+        assert!((curve.at(at).0 - value).abs() < 1e-14);
+        let (before, after) = (curve.at(at - 1e-9), curve.at(at + 1e-9));
+        assert!((before.0 - after.0).abs() < 1e-6 && (before.1 - after.1).abs() < 1e-4);
+    }
+    for pair in points.windows(2) {
+        let secant = (pair[1][1] - pair[0][1]) / (pair[1][0] - pair[0][0]);
+        for k in 0..=200 {
+            let x = pair[0][0] + (pair[1][0] - pair[0][0]) * f64::from(k) / 200.0;
+            let (value, slope) = curve.at(x);
+            assert!(
+                value >= pair[0][1].min(pair[1][1]) - 1e-12 && value <= pair[0][1].max(pair[1][1]) + 1e-12
+            );
+            assert!(slope * secant >= -1e-9 && slope.abs() <= 2.0 * secant.abs() + 1e-9, "{slope} {secant}");
+            if k % 200 != 0 {
+                same_slope("curve", slope, &|x| curve.at(x).0, x);
+            }
+        }
+    }
+    assert_eq!((curve.at(-50.0), curve.at(50.0)), ((1.0, 0.0), (4.0, 0.0)));
+    assert_eq!((Curve::ZERO.at(1.0), curve.times(-2.0).at(0.0).0), ((0.0, 0.0), -7.0));
+    let json = serde_json::to_string(&curve).unwrap();
+    assert_eq!(serde_json::from_str::<Curve>(&json).unwrap(), curve);
+    for wrong in
+        [&[[1.0, 0.0], [1.0, 2.0]][..], &[[2.0, 0.0], [1.0, 2.0]], &[[0.0, f64::NAN]], &[[0.0; 2]; 9]]
+    {
+        assert_eq!(Curve::through(wrong), None);
+    }
 }

@@ -1,6 +1,8 @@
 //! Fits: the demonstration records reach every limit of their sheets on the unsafe side; contradictions are refused.
 
 mod bias;
+mod gain;
+mod limits;
 mod timing;
 
 use qsheaf::fit::{self, Bound, Law};

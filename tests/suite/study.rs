@@ -56,6 +56,7 @@ const PART: &str = "X-1:
     - {V_BE: {min: 0.6 V, typ: 0.67 V, max: 0.75 V}, I_C: 10 mA, V_CE: 5 V}
     - {V_CE(sat): {typ: 0.1 V, max: 0.25 V}, I_C: 20 mA, I_B: 0.5 mA}
     - {I_CBO: {max: 20 nA}, V_CB: 20 V}
+    - {I_CBO: {max: 8 µA}, V_CB: 20 V, T_j: 125 °C}
   ratings: {V_CEO: 40 V, V_CBO: 40 V, V_EBO: 5 V, I_C: 100 mA, I_B: 20 mA, P_tot: 300 mW, T_j: 150 °C, R_th(j-a): 350 K/W}
 ";
 
@@ -115,6 +116,10 @@ fn verdicts_say_what_they_rest_on() {
     let no_leakage = PART.lines().filter(|line| !line.contains("I_CBO")).collect::<Vec<_>>().join("\n");
     let Verdict::NotShown { reason } = verdict(&run(SHEET, &no_leakage).unwrap(), "dark") else { panic!() };
     assert!(reason.contains("I_CBO max"), "{reason}");
+
+    // One temperature of I_CBO: its growth is an assumption.
+    let one_row = PART.lines().filter(|line| !line.contains("125 °C")).collect::<Vec<_>>().join("\n");
+    assert_eq!(verdict(&run(SHEET, &one_row).unwrap(), "dark"), Verdict::MetOnAssumptions { count: 1 });
 
     // More current than the row covers.
     let beyond = run(&with("resistor: 1 kΩ ± 1 %", "resistor: 220 Ω ± 1 %"), PART).unwrap();

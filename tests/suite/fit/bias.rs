@@ -1,5 +1,6 @@
 //! Devices at a given bias: confirmed solutions of the device equations, the same as by nested halving.
 
+use qsheaf::device::curve::Curve;
 use qsheaf::device::transistor::{AtTemperature, Transistor};
 use qsheaf::fit::simulate::{self, AtBias};
 
@@ -23,6 +24,8 @@ pub fn device() -> Transistor {
         energy_gap: 1.12,
         saturation_exponent: 3.0,
         gain_exponent: 1.5,
+        gain_over_current: Curve::ZERO,
+        gain_over_temperature: Curve::ZERO,
     }
 }
 

@@ -147,6 +147,8 @@ pub fn ideal() -> Transistor {
         energy_gap: 1.12,
         saturation_exponent: 3.0,
         gain_exponent: 1.5,
+        gain_over_current: qsheaf::device::curve::Curve::ZERO,
+        gain_over_temperature: qsheaf::device::curve::Curve::ZERO,
     }
 }
 
