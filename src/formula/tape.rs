@@ -3,8 +3,9 @@
 use super::{Binary, Comparison, Expr, Formula, Function};
 use crate::diagnostic::Diagnostic;
 
-/// Deepest stack of a tape; brackets are bounded well below it.
+/// Deepest stack of a tape; brackets are bounded well below it. Most tapes need far less, which is sooner made ready.
 const STACK: usize = 64;
+const SHALLOW: usize = 4;
 
 #[derive(Clone, Copy, PartialEq, Debug)]
 enum Op {
@@ -21,6 +22,8 @@ enum Op {
 #[derive(Clone, PartialEq, Debug)]
 pub struct Tape {
     ops: Vec<Op>,
+    /// Whether a stack of [`SHALLOW`] values is enough.
+    is_shallow: bool,
 }
 
 impl Formula {
@@ -31,7 +34,7 @@ impl Formula {
     pub fn compile(&self, slot: &dyn Fn(&str) -> Option<usize>) -> Result<Tape, Diagnostic> {
         let mut ops = Vec::new();
         emit(&self.expr, slot, &mut ops)?;
-        let mut depth = 0_usize;
+        let (mut depth, mut deepest) = (0_usize, 0_usize);
         for op in &ops {
             depth = match op {
                 Op::Push(_) | Op::Load(_) => depth + 1,
@@ -39,12 +42,13 @@ impl Formula {
                 Op::Choose(_) => depth - 3,
                 _ => depth - 1,
             };
+            deepest = deepest.max(depth);
             if depth > STACK {
                 return Err(Diagnostic::error(&self.place, "the formula is nested too deep")
                     .expected("several shorter lines"));
             }
         }
-        Ok(Tape { ops })
+        Ok(Tape { ops, is_shallow: deepest <= SHALLOW })
     }
 }
 
@@ -87,7 +91,15 @@ fn emit(expr: &Expr, slot: &dyn Fn(&str) -> Option<usize>, ops: &mut Vec<Op>) ->
 impl Tape {
     /// The value over `slots`; not-a-number where a slot is missing or the mathematics has no value.
     pub fn eval(&self, slots: &[f64]) -> f64 {
-        let mut stack = [f64::NAN; STACK + 1];
+        match *self.ops.as_slice() {
+            [Op::Push(value)] => value,
+            [Op::Load(slot)] => slots.get(slot).copied().unwrap_or(f64::NAN),
+            _ if self.is_shallow => self.run(slots, [f64::NAN; SHALLOW + 1]),
+            _ => self.run(slots, [f64::NAN; STACK + 1]),
+        }
+    }
+
+    fn run<const N: usize>(&self, slots: &[f64], mut stack: [f64; N]) -> f64 {
         let mut top = 0;
         for op in &self.ops {
             match *op {

@@ -2,6 +2,7 @@
 
 pub mod dense;
 mod table;
+pub mod threads;
 
 /// Above this argument e^x is infinite in double precision, below the second it is zero.
 const HIGHEST: f64 = 709.782_712_893_384;

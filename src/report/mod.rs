@@ -20,6 +20,7 @@ use serde_json::{Value, json};
 
 use crate::diagnostic::{Diagnostic, Diagnostics};
 use crate::figure;
+use crate::numeric::threads;
 use crate::redline::Moves;
 use crate::source::Bundle;
 use crate::study::Findings;
@@ -64,7 +65,7 @@ pub fn source(
     files: &Bundle,
 ) -> Result<Sources, Diagnostics> {
     let images = page::images(findings, files);
-    let drawings: Vec<_> = findings.figures.iter().map(figure::draw).collect();
+    let drawings: Vec<_> = threads::on_two(&findings.figures, figure::draw);
     let page = page::page(findings, issue, moves, &images, &drawings);
     let (texts, foreign) = templates::gather(files)?;
     let mut out = templates::render(&texts, &safe::json_bytes(&context(findings, issue, &page)))?;

@@ -6,6 +6,9 @@ use crate::device::{diode, transistor};
 /// Junction current (A) at which a junction counts as entered by [`Limit`].
 const ENTRY_CURRENT: f64 = 1e-6;
 
+/// How many folds below its entry a junction still counts as conducting for [`Limit::carried`].
+const NEARLY: f64 = 5.0;
+
 /// A device at its junction temperature.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Device {
@@ -54,6 +57,19 @@ impl Limit {
             f64::INFINITY
         };
         Limit { fold, entry, ..Limit::NONE }
+    }
+
+    /// The voltage of a small forward current and that of e-fold current.
+    pub fn scale(&self) -> [f64; 2] {
+        [self.entry, self.fold]
+    }
+
+    /// The voltage at which a forward junction carries the current that it carried at `voltage` when its scale was `before`;
+    /// a junction that does not conduct keeps its voltage.
+    pub fn carried(&self, voltage: f64, before: [f64; 2]) -> f64 {
+        let [entry, fold] = before;
+        let conducts = voltage > entry - NEARLY * fold && self.entry.is_finite();
+        if conducts { self.entry + (voltage - entry) * (self.fold / fold) } else { voltage }
     }
 
     /// The voltage to go to, where Newton's method would go from `from` to `to`.

@@ -117,8 +117,12 @@ pub struct Solution {
     pub junctions: Vec<f64>,
     /// Currents of the two-terminal elements (A) but diodes, in network order, then node voltages but ground (V).
     pub linear: Vec<f64>,
-    /// Junction temperature of each device (K).
+    /// Junction temperature of each device (K), and the ambient's.
     pub temperatures: Vec<f64>,
+    pub ambient: f64,
+    /// For each junction the voltage (V) of a small current and that of e-fold current: what carries its voltage over to
+    /// another temperature or specimen.
+    pub scales: Vec<[f64; 2]>,
 }
 
 /// A way to an operating point.

@@ -30,12 +30,17 @@ struct Stage {
     sources: f64,
     /// Conductance (S) beside every junction.
     conductance: f64,
-    /// Whether the acceptance rule must hold, or nearness is enough.
+    /// Whether the acceptance rule must hold, or a step of so many times the accepted voltage error is near enough.
     last: bool,
+    near: f64,
     steps: usize,
 }
 
-const WHOLE: Stage = Stage { sources: 1.0, conductance: 0.0, last: true, steps: STEPS };
+const WHOLE: Stage = Stage { sources: 1.0, conductance: 0.0, last: true, near: NEAR, steps: STEPS };
+/// Newton's method converges quadratically: after a step of 1 µV the next one is far below what is accepted, after one of
+/// 0.1 mV the dissipation is right to a hundred-thousandth.
+const NEAR: f64 = 1e3;
+const ROUGHLY: f64 = 1e5;
 
 impl Plan {
     /// Solves at the temperatures that `scratch.prepared` stands for; `scratch.y`, `u` hold the start and receive the
@@ -67,9 +72,10 @@ impl Plan {
     }
 
     /// Newton's method from the present state to where its steps are so small that the next one would be accepted, without
-    /// confirming it; false where it does not get there.
-    pub(super) fn approach(&self, scratch: &mut Scratch) -> bool {
-        self.newton(scratch, Stage { last: false, steps: STAGE_STEPS, ..WHOLE }).is_ok()
+    /// confirming it, or `roughly` to a ten-thousandth of a volt; false where it does not get there.
+    pub(super) fn approach(&self, scratch: &mut Scratch, roughly: bool) -> bool {
+        let near = if roughly { ROUGHLY } else { NEAR };
+        self.newton(scratch, Stage { last: false, near, steps: STAGE_STEPS, ..WHOLE }).is_ok()
     }
 
     /// Everything at zero.
@@ -85,6 +91,7 @@ impl Plan {
         let fits = start.junctions.len() == self.ports
             && start.linear.len() == self.unknowns()
             && start.temperatures.len() == self.devices
+            && start.scales.len() == self.ports
             && start.junctions.iter().chain(&start.linear).chain(&start.temperatures).all(|x| x.is_finite());
         if fits {
             scratch.y.clear();
@@ -159,7 +166,7 @@ impl Plan {
                         return Ok(error);
                     }
                 }
-            } else if moved <= 1e3 * bound {
+            } else if moved <= stage.near * bound {
                 return Ok(moved);
             }
             for (right, residual) in scratch.right.iter_mut().zip(&scratch.residual) {

@@ -17,6 +17,8 @@ pub const RUNAWAY_RISE: f64 = 500.0;
 const LARGEST_CURRENT: f64 = 1e6;
 /// Excess (K) below which an equilibrium counts as found.
 const EXCESS: f64 = 1e-8;
+/// Change of temperature (K) above which the circuit need only be known roughly to say where to go next.
+const ROUGH_STEP: f64 = 0.1;
 /// Steps of Broyden's method, of warming, of the power method.
 const STEPS: usize = 14;
 const WARMING_STEPS: usize = 400;
@@ -67,13 +69,17 @@ impl Plan {
             Some(start) => {
                 for h in 0..scratch.heat.hot.len() {
                     let device = scratch.heat.hot[h].1;
-                    let warm = start.temperatures[device];
-                    scratch.heat.temperatures[device] = warm.clamp(ambient, ambient + RUNAWAY_RISE);
+                    // The rise is more alike at another ambient than the temperature.
+                    let rise = start.temperatures[device] - start.ambient;
+                    scratch.heat.temperatures[device] = ambient + rise.clamp(0.0, RUNAWAY_RISE);
                 }
             }
             None => self.rest(scratch),
         }
         self.prepare(branches, scratch);
+        if let Some(start) = started {
+            self.carry(&start.scales, scratch);
+        }
         self.eliminate(scratch)?;
         let first = if started.is_some() { Attempt::FromStart } else { Attempt::Direct };
         point.error = if scratch.heat.hot.is_empty() {
@@ -138,7 +144,7 @@ impl Plan {
         attempts: &mut Vec<Attempt>,
     ) -> Result<f64, Failure> {
         self.reheat(branches, scratch)?;
-        let error = if self.approach(scratch) {
+        let error = if self.approach(scratch, largest(&scratch.heat.step) > ROUGH_STEP) {
             f64::INFINITY
         } else {
             self.electrical(scratch, Attempt::Direct, attempts)?
@@ -168,13 +174,36 @@ impl Plan {
         for h in 0..scratch.heat.hot.len() {
             let (element, device, _) = scratch.heat.hot[h];
             let now = Device::prepare(&branches[element], scratch.heat.temperatures[device]);
-            changed |= now.resistances != scratch.prepared[device].resistances;
-            scratch.prepared[device] = now;
+            let before = std::mem::replace(&mut scratch.prepared[device], now);
+            changed |= now.resistances != before.resistances;
+            for (j, port) in self.ports_of(element).enumerate() {
+                scratch.u[port] = now.limits[j].carried(scratch.u[port], before.limits[j].scale());
+            }
         }
         if changed {
             self.eliminate(scratch)?;
         }
         Ok(())
+    }
+
+    /// Takes the junction voltages of a start over to the devices as they are now: the same currents.
+    fn carry(&self, scales: &[[f64; 2]], scratch: &mut Scratch) {
+        for (element, slot) in self.slots.iter().enumerate() {
+            let (Slot::Diode { device, .. } | Slot::Transistor { device, .. }) = *slot else { continue };
+            for (j, port) in self.ports_of(element).enumerate() {
+                let limit = &scratch.prepared[device].limits[j];
+                scratch.u[port] = limit.carried(scratch.u[port], scales[port]);
+            }
+        }
+    }
+
+    /// Ports of an element's junctions.
+    fn ports_of(&self, element: usize) -> std::ops::Range<usize> {
+        match self.slots[element] {
+            Slot::Two { .. } => 0..0,
+            Slot::Diode { port, .. } => port..port + 1,
+            Slot::Transistor { port, .. } => port..port + 2,
+        }
     }
 
     /// By how much each device would be warmer than it is.
@@ -415,6 +444,15 @@ impl Plan {
         point.solution.junctions.clone_from(&scratch.u);
         point.solution.linear.clone_from(&scratch.y);
         point.solution.temperatures.clone_from(&scratch.heat.temperatures);
+        point.solution.ambient = ambient;
+        point.solution.scales.clear();
+        point.solution.scales.resize(self.ports, [f64::INFINITY, 1.0]);
+        for (element, slot) in self.slots.iter().enumerate() {
+            let (Slot::Diode { device, .. } | Slot::Transistor { device, .. }) = *slot else { continue };
+            for (j, port) in self.ports_of(element).enumerate() {
+                point.solution.scales[port] = scratch.prepared[device].limits[j].scale();
+            }
+        }
     }
 
     /// Voltages and currents at the terminals of one element.

@@ -14,7 +14,8 @@ pub(super) struct Evaluator<'a> {
     response: &'a dyn Response,
     pub axes: &'a [Axis],
     pub seen: Vec<Seen>,
-    index: BTreeMap<Vec<u64>, usize>,
+    /// Index of each point by the digest of its bits; where two points share one, the later stands at the next free number.
+    index: BTreeMap<u64, usize>,
     pub regions: Vec<RegionAt>,
 }
 
@@ -31,9 +32,12 @@ impl<'a> Evaluator<'a> {
 
     /// Index of the point among those seen, evaluating it if it is new.
     pub fn point(&mut self, at: &[f64]) -> usize {
-        let key: Vec<u64> = at.iter().map(|value| value.to_bits()).collect();
-        if let Some(index) = self.index.get(&key) {
-            return *index;
+        let mut key = digest(at);
+        while let Some(&index) = self.index.get(&key) {
+            if is_same(&self.seen[index].at, at) {
+                return index;
+            }
+            key = key.wrapping_add(1);
         }
         let mut outputs = vec![Err(Miss::NotConverged); self.response.outputs()];
         let code = self.response.eval(at, &mut outputs);
@@ -81,4 +85,16 @@ impl<'a> Evaluator<'a> {
     pub fn width(&self, axis: usize) -> f64 {
         self.axes[axis].high - self.axes[axis].low
     }
+}
+
+/// A number for the bits of a point: each value folded in by a multiplication (Fowler, Noll and Vo, FNV-1a, by words).
+fn digest(at: &[f64]) -> u64 {
+    at.iter().fold(0xcbf2_9ce4_8422_2325, |digest, value| {
+        let mixed = (digest ^ value.to_bits()).wrapping_mul(0x0000_0100_0000_01b3);
+        mixed ^ mixed >> 29
+    })
+}
+
+fn is_same(one: &[f64], other: &[f64]) -> bool {
+    one.iter().zip(other).all(|(one, other)| one.to_bits() == other.to_bits())
 }

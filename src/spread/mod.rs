@@ -136,6 +136,21 @@ pub struct Range {
     pub regions: Vec<RegionAt>,
 }
 
+impl Range {
+    /// An output of which nothing but its nominal value is known, and the regions met when others were searched.
+    pub fn unsearched(nominal: Result<f64, Miss>, regions: Vec<RegionAt>) -> Range {
+        Range {
+            nominal,
+            min: None,
+            max: None,
+            interior: Vec::new(),
+            non_monotone: Vec::new(),
+            missing: None,
+            regions,
+        }
+    }
+}
+
 /// Whether a margin lies clear of the numerical error. Solutions are confirmed to 1e-9 of the currents that meet at a node;
 /// `scale` is the size of what is compared, and a millionth of it leaves room for what formulas do with the error.
 pub fn margin_is_decided(margin: f64, scale: f64) -> bool {

@@ -9,7 +9,7 @@ const CROSSED: usize = 6;
 /// How many other hills are climbed where an output rises and falls.
 const HILLS: usize = 4;
 /// How many points are asked whether they lie on another hill, at most.
-const STARTS: usize = 24;
+const STARTS: usize = 16;
 /// Points that differ by less than this share of every axis belong to one hill.
 const APART: f64 = 0.3;
 
@@ -130,7 +130,7 @@ impl Search<'_> {
     fn on_one_hill(&mut self, goal: &Goal, start: Candidate, top: usize) -> bool {
         let from = self.points.seen[start.index].at.clone();
         let to = self.points.seen[top].at.clone();
-        [0.25, 0.5, 0.75].into_iter().all(|share| {
+        [1.0 / 3.0, 2.0 / 3.0].into_iter().all(|share| {
             let at: Vec<f64> = from
                 .iter()
                 .zip(&to)

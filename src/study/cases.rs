@@ -2,9 +2,10 @@
 
 use super::compile::Compiled;
 use super::judge::Found;
-use super::response::{Disturbance, InCondition, Moves};
+use super::response::{Asked, Disturbance, InCondition, Moves};
 use crate::circuit::ElementKind;
 use crate::fit::{Bound, Law, Model};
+use crate::numeric::threads;
 use crate::part::RatingQuantity;
 use crate::quantity::{Quantity, Role, Spread};
 use crate::solve::{Branch, Region, Thermal};
@@ -56,36 +57,29 @@ pub(super) fn search<'a>(compiled: &'a Compiled<'a>, conditions: &[Stated<'_>]) 
     let options: Vec<Options> =
         cases.iter().map(|case| wanted(compiled, &conditions[case.condition])).collect();
     let pairs: Vec<(&Case<'_>, &Options)> = cases.iter().zip(&options).collect();
-    let found = on_two_threads(&pairs, |(case, options)| spread::extremes(&case.response, options));
+    let found = threads::on_two(&pairs, |(case, options)| ranges(&case.response, options));
     for (case, ranges) in cases.iter_mut().zip(found) {
         case.ranges = ranges;
     }
     cases
 }
 
-/// What `work` makes of each item, in their order, on two threads.
-pub(super) fn on_two_threads<I: Sync, T: Send + Default>(
-    items: &[I],
-    work: impl Fn(&I) -> T + Sync,
-) -> Vec<T> {
-    let next = std::sync::atomic::AtomicUsize::new(0);
-    let slots: Vec<std::sync::Mutex<T>> = items.iter().map(|_| Default::default()).collect();
-    let take = || {
-        loop {
-            let i = next.fetch_add(1, std::sync::atomic::Ordering::Relaxed);
-            let (Some(item), Some(slot)) = (items.get(i), slots.get(i)) else { return };
-            let found = work(item);
-            *slot.lock().unwrap_or_else(std::sync::PoisonError::into_inner) = found;
-        }
-    };
-    std::thread::scope(|scope| {
-        scope.spawn(take);
-        take();
-    });
-    slots
-        .into_iter()
-        .map(|slot| slot.into_inner().unwrap_or_else(std::sync::PoisonError::into_inner))
-        .collect()
+/// The range of every output; of those of which no end is wanted the nominal value alone.
+fn ranges(condition: &InCondition<'_>, options: &Options) -> Vec<Range> {
+    // The first output is always asked: regions are met on the way.
+    let is_asked = |output: &usize| *output == 0 || options.wanted[*output] != (false, false);
+    let outputs: Vec<usize> = (0..options.wanted.len()).filter(is_asked).collect();
+    let wanted = outputs.iter().map(|&output| options.wanted[output]).collect();
+    let asked = Asked { condition, outputs };
+    let found = spread::extremes(&asked, &Options { wanted });
+    let nominal = condition.disturbed(&condition.nominal(), &[]);
+    let regions = found.first().map_or_else(Vec::new, |range| range.regions.clone());
+    let unsearched = |nominal| Range::unsearched(nominal, regions.clone());
+    let mut all: Vec<Range> = nominal.into_iter().map(unsearched).collect();
+    for (output, range) in asked.outputs.into_iter().zip(found) {
+        all[output] = range;
+    }
+    all
 }
 
 /// The ends that this condition needs: margins downward where the criterion or demand applies, results both ways.

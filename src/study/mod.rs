@@ -28,6 +28,7 @@ pub use findings::*;
 pub use tally::{Tally, Verdicts};
 
 use crate::diagnostic::Diagnostics;
+use crate::numeric::threads;
 use crate::solve::Thermal;
 use crate::source::Bundle;
 
@@ -101,24 +102,25 @@ fn figures(
     conditions: &[cases::Stated<'_>],
     diagnostics: &mut Diagnostics,
 ) -> Vec<FigureFinding> {
-    let mut found = Vec::new();
-    for (request, outputs) in compiled.material.worksheet.figures.iter().zip(&compiled.figures) {
+    let requests: Vec<_> = compiled.material.worksheet.figures.iter().zip(&compiled.figures).collect();
+    let drawn = threads::on_two(&requests, |(request, outputs)| {
         let wanted = request.condition.as_ref().map(|condition| condition.value.as_str());
         let index = wanted.and_then(|name| conditions.iter().position(|c| c.name == name)).unwrap_or(0);
         let settled = |case: &&cases::Case<'_>| {
             case.condition == index && case.response.thermal == Thermal::Equilibrium
         };
-        let Some(case) = cases.iter().find(settled) else { continue };
-        match series::figure(compiled, request, outputs, case) {
-            Ok(figure) => found.push(figure),
-            Err(diagnostic) => {
-                // A block keeps its number: what cannot be drawn stands as an empty figure with the reason as its title.
-                found.push(FigureFinding::not_shown(&diagnostic.message));
-                diagnostics.push(diagnostic);
-            }
-        }
-    }
-    found
+        let case = cases.iter().find(settled)?;
+        Some(series::figure(compiled, request, outputs, case))
+    });
+    let kept = drawn.into_iter().flatten().map(|drawn| {
+        drawn.unwrap_or_else(|diagnostic| {
+            // A block keeps its number: what cannot be drawn stands as an empty figure with the reason as its title.
+            let figure = FigureFinding::not_shown(&diagnostic.message);
+            diagnostics.push(diagnostic);
+            figure
+        })
+    });
+    kept.collect()
 }
 
 fn condition_finding(condition: &cases::Stated<'_>) -> ConditionFinding {

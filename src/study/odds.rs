@@ -3,13 +3,14 @@
 //! Bias-like inputs stand at the worst end of the criterion: where the search for extremes found it, and then at whichever
 //! end of each makes a small set of specimens worse, until nothing moves. Condition and thermal state are the worst as well.
 
-use super::cases::{Case, on_two_threads};
+use super::cases::Case;
 use super::compile::CriterionOutputs;
 use super::findings::{
     CombinedFinding, CoverageFinding, CriterionFinding, Established, SampledFinding, SpreadFinding,
     TermFinding, Verdict,
 };
 use super::judge::{Found, Judge, Ruling, reason, wanted};
+use crate::numeric::threads;
 use crate::quantity::{self, Role, Shown, Unit};
 use crate::solve::Thermal;
 use crate::spread::{
@@ -89,7 +90,7 @@ fn draw(
     let count = coverage
         .samples
         .unwrap_or_else(|| LEAST_SAMPLES.max((FAILING / (1.0 - coverage.share)).ceil() as usize));
-    let drawn = on_two_threads(&asked, |&index| {
+    let drawn = threads::on_two(&asked, |&index| {
         let case = &cases[index];
         let roles = case.roles(compiled, &conditions[case.condition]);
         let held = settle(case, &roles, outputs.margin, coverage.share);

@@ -231,7 +231,7 @@ impl<'a> InCondition<'a> {
     /// All outputs at a point of the space, with disturbances of elements.
     pub fn disturbed(&self, at: &[f64], disturbed: &[(usize, Disturbance)]) -> Vec<Result<f64, Miss>> {
         let mut outputs = vec![Err(Miss::NotConverged); self.space.outputs.len()];
-        self.evaluate(at, disturbed, &mut outputs);
+        self.evaluate(at, disturbed, None, &mut outputs);
         outputs
     }
 
@@ -413,10 +413,12 @@ impl<'a> InCondition<'a> {
         1.0 + coefficient * rise + tapes.coefficient_bound * rise.abs() * side
     }
 
+    /// The outputs whose numbers stand in `asked`, or all; the code of all regions.
     fn evaluate(
         &self,
         at: &[f64],
         disturbed: &[(usize, Disturbance)],
+        asked: Option<&[usize]>,
         outputs: &mut [Result<f64, Miss>],
     ) -> u64 {
         let mut work = self.work();
@@ -428,7 +430,8 @@ impl<'a> InCondition<'a> {
             return u64::MAX;
         }
         self.read(&mut work);
-        for ((tape, leans_on), output) in self.space.outputs.iter().zip(outputs) {
+        for (i, output) in outputs.iter_mut().enumerate() {
+            let (tape, leans_on) = &self.space.outputs[asked.map_or(i, |asked| asked[i])];
             let value = tape.eval(&work.slots);
             *output = if value.is_finite() {
                 Ok(value)
@@ -550,7 +553,28 @@ impl Response for InCondition<'_> {
     }
 
     fn eval(&self, at: &[f64], outputs: &mut [Result<f64, Miss>]) -> u64 {
-        self.evaluate(at, &[], outputs)
+        self.evaluate(at, &[], None, outputs)
+    }
+}
+
+/// Some outputs of a condition: what it is searched for.
+pub(super) struct Asked<'c, 'a> {
+    pub condition: &'c InCondition<'a>,
+    /// Numbers of the outputs.
+    pub outputs: Vec<usize>,
+}
+
+impl Response for Asked<'_, '_> {
+    fn axes(&self) -> &[Axis] {
+        &self.condition.axes
+    }
+
+    fn outputs(&self) -> usize {
+        self.outputs.len()
+    }
+
+    fn eval(&self, at: &[f64], outputs: &mut [Result<f64, Miss>]) -> u64 {
+        self.condition.evaluate(at, &[], Some(&self.outputs), outputs)
     }
 }
 

@@ -145,6 +145,12 @@ fn note(work: &Path) -> bool {
         whole.push(issue(&notebook, 2));
         alone.push(typeset());
     }
+    let studied = (0..20).map(|_| {
+        let start = Instant::now();
+        study(&bundle, LARGEST).expect("the demonstration is right");
+        start.elapsed()
+    });
+    println!("note: its study alone, in a warm process: {:.1?}", median(studied.collect()));
     let (whole, alone) = (median(whole), median(alone));
     let ratio = whole.as_secs_f64() / alone.as_secs_f64();
     println!(
