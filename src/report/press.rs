@@ -163,6 +163,9 @@ impl World for Desk<'_> {
 ///
 /// Errors name the template, line and column. Pure: the same sources give the same bytes.
 pub fn press(sources: &Sources) -> (Result<Vec<u8>, Diagnostics>, Diagnostics) {
+    // The typesetter remembers every layout it ever made; notes have nothing in common that is worth keeping. Forgotten
+    // before the next one, not after each: the last note of a run need not wait for it.
+    comemo::evict(0);
     let Some(main) = file_id("note.typ") else {
         return (
             Err(Diagnostic::bare("the template note.typ cannot be named").into()),
@@ -192,8 +195,6 @@ pub fn press(sources: &Sources) -> (Result<Vec<u8>, Diagnostics>, Diagnostics) {
         };
         typst_pdf::pdf(&document, &options)
     });
-    // The typesetter remembers every layout it ever made; notes have nothing in common that is worth keeping.
-    comemo::evict(0);
     let pdf = pdf.map_err(|errors| {
         let mut out = Diagnostics::default();
         for error in &errors {

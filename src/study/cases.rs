@@ -56,10 +56,12 @@ pub(super) fn search<'a>(compiled: &'a Compiled<'a>, conditions: &[Stated<'_>]) 
     }
     let options: Vec<Options> =
         cases.iter().map(|case| wanted(compiled, &conditions[case.condition])).collect();
-    let pairs: Vec<(&Case<'_>, &Options)> = cases.iter().zip(&options).collect();
-    let found = threads::on_two(&pairs, |(case, options)| ranges(&case.response, options));
-    for (case, ranges) in cases.iter_mut().zip(found) {
-        case.ranges = ranges;
+    // Equilibria take longest: begun first, they leave no thread alone at the end.
+    let mut order: Vec<usize> = (0..cases.len()).collect();
+    order.sort_by_key(|&index| cases[index].response.thermal == Thermal::ColdStart);
+    let found = threads::on_two(&order, |&index| ranges(&cases[index].response, &options[index]));
+    for (index, ranges) in order.into_iter().zip(found) {
+        cases[index].ranges = ranges;
     }
     cases
 }
