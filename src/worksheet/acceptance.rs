@@ -5,7 +5,7 @@
 
 use std::ops::Range;
 
-use crate::diagnostic::{Diagnostic, Diagnostics};
+use crate::diagnostic::{self, Diagnostic, Diagnostics};
 
 use super::fence::RawBlock;
 use super::lines::{self, Line};
@@ -82,7 +82,15 @@ fn read_line(
     let tail: Vec<Spot<String>> =
         tail.iter().map(|word| line.spot(rest.start + word.start..rest.start + word.end)).collect();
     let tail = read_tail(&tail, reason, diagnostics);
+    let told = diagnostics.0.len();
     let what = read_what(line, body.clone(), diagnostics);
+    if what.is_none()
+        && let Some(misspelt) = misspelt_tail(line, &rest, text, &words)
+    {
+        // What the demand's grammar made of the rest of the line would lead astray.
+        diagnostics.0.truncate(told);
+        diagnostics.push(misspelt);
+    }
     let Tail { over, coverage, conditions, safety } = tail?;
     Some(CriterionLine {
         place: label.place.clone(),
@@ -95,6 +103,17 @@ fn read_line(
         clause,
         safety,
         block,
+    })
+}
+
+/// A word that stands where `over` or `safety` was meant, in a demand that cannot be read.
+fn misspelt_tail(line: &Line, rest: &Range<usize>, text: &str, words: &[Range<usize>]) -> Option<Diagnostic> {
+    words.iter().skip(1).find_map(|word| {
+        let found = text.get(word.clone()).filter(|found| found.chars().all(char::is_alphabetic))?;
+        let meant = diagnostic::nearest(found, ["over", "safety"]).filter(|meant| *meant != found)?;
+        let place = line.place(rest.start + word.start..rest.start + word.end);
+        let error = Diagnostic::error(&place, format!("`{found}` cannot follow a demand"));
+        Some(error.expected(format!("`{EXAMPLE}`")).nearest(found, [meant]))
     })
 }
 

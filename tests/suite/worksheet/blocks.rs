@@ -130,6 +130,8 @@ fn acceptance_errors() {
         block("acceptance", "a: T_a < 3 over corners\n"),
         ["9:17 `corners` does not say over what the criterion holds"]
     );
+    assert_eq!(block("acceptance", "a: T_a < 3 ovr extremes\n"), ["9:12 `ovr` cannot follow a demand"]);
+    assert_eq!(block("acceptance", "a: Q1 off saftey\n"), ["9:11 `saftey` cannot follow a demand"]);
     assert_eq!(block("acceptance", "a: T_a < 3 in\n"), ["9:12 no condition follows `in`"]);
     assert_eq!(block("acceptance", "a: T_a < 3 over nominal safty\n"), ["9:25 `safty` means nothing here"]);
     assert_eq!(
