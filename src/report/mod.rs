@@ -106,6 +106,7 @@ fn context(findings: &Findings, issue: &Issue, page: &Value) -> Value {
             "results": !findings.results.is_empty(),
             "spreads": !findings.spreads.is_empty(),
             "stress": !findings.stress.is_empty(),
+            "heat": !findings.heat.is_empty(),
             "fits": !findings.models.is_empty(),
             "trace": !findings.trace.is_empty(),
             "validity": !findings.validity.is_empty(),

@@ -23,6 +23,7 @@ mod midband;
 mod newton;
 mod plan;
 mod region;
+mod runaway;
 mod thermal;
 
 pub use midband::Midband;
@@ -30,6 +31,7 @@ pub use plan::{Class, Plan, Scratch, Topology};
 pub use region::{
     EDGE_OF_SATURATION, Region, active_gain, cut_in_voltage, forced_gain, margin, overdrive, region,
 };
+pub use runaway::Equilibrium;
 
 use crate::device::{diode, transistor};
 

@@ -11,8 +11,8 @@ use super::newton::note;
 use super::plan::{Plan, Scratch, Slot};
 use super::{Attempt, Branch, ElementPoint, Failure, OperatingPoint, Solution, Thermal};
 
-/// Junction temperature above ambient (K) beyond which there is no equilibrium to look for.
-pub const RUNAWAY_RISE: f64 = 500.0;
+/// Junction temperature above ambient (K) beyond which there is no equilibrium to look for: silicon is no transistor there.
+pub const RUNAWAY_RISE: f64 = 300.0;
 /// Current (A) beyond which a solution says nothing about a circuit of discrete parts.
 const LARGEST_CURRENT: f64 = 1e6;
 /// Excess (K) below which an equilibrium counts as found.
@@ -96,7 +96,7 @@ impl Plan {
     }
 
     /// Checks temperatures and thermal resistances; every device at ambient, and the list of those that heat themselves.
-    fn temperatures(
+    pub(super) fn temperatures(
         &self,
         branches: &[Branch],
         ambient: f64,
@@ -154,7 +154,7 @@ impl Plan {
     }
 
     /// The circuit at new temperatures, confirmed; fills `heat.excess`. Returns the estimated voltage error (V).
-    fn follow(
+    pub(super) fn follow(
         &self,
         branches: &[Branch],
         ambient: f64,

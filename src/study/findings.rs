@@ -36,6 +36,7 @@ pub struct Findings {
     #[serde(default)]
     pub spreads: Vec<SpreadFinding>,
     pub stress: Vec<StressLine>,
+    pub heat: Vec<HeatFinding>,
     pub cautions: Vec<Caution>,
     pub figures: Vec<FigureFinding>,
     /// Clauses and the labels of the criteria that answer each.
@@ -138,6 +139,36 @@ pub struct TransistorPoint {
     pub power: f64,
     /// Junction temperature (K) in equilibrium; `None` without a thermal resistance.
     pub t_j: Option<f64>,
+}
+
+/// How near a transistor's heat comes to run-away, at the corner at which its junction is hottest. Temperatures in K.
+#[derive(Clone, PartialEq, Debug, Serialize, Deserialize)]
+pub struct HeatFinding {
+    pub designator: String,
+    pub condition: String,
+    /// Ambient temperature of the corner.
+    pub ambient: f64,
+    pub r_th: f64,
+    /// The equilibrium there; none where the temperature runs away.
+    pub equilibrium: Option<EquilibriumFinding>,
+    /// Ambient temperature from which no equilibrium lasts; none between the ends of what was looked at.
+    pub runaway_from: Option<f64>,
+    pub looked_at: [f64; 2],
+    /// Junction temperature beyond which a transistor that was heated from outside does not come back, where there is one
+    /// and a single device heats itself.
+    pub upper: Option<f64>,
+    /// Least resistance (Ω) in series with the emitter for a loop gain of one half, where it is above that.
+    pub ballast: Option<f64>,
+}
+
+/// A thermal equilibrium.
+#[derive(Clone, Copy, PartialEq, Debug, Serialize, Deserialize)]
+pub struct EquilibriumFinding {
+    /// Dissipation (W) and junction temperature (K).
+    pub power: f64,
+    pub t_j: f64,
+    /// Loop gain of the closed circuit: R_th dP/dT_j, the largest eigenvalue where several devices heat themselves.
+    pub gain: f64,
 }
 
 /// How an extreme was established.

@@ -13,6 +13,7 @@
 mod cases;
 mod compile;
 mod findings;
+mod heat;
 mod judge;
 mod material;
 mod names;
@@ -83,6 +84,7 @@ pub fn study(bundle: &Bundle, path: &str) -> Result<Findings, Diagnostics> {
         results,
         derivation,
         criteria,
+        heat: heat::lines(&judge),
         stress,
         cautions,
         figures,

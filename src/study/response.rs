@@ -120,6 +120,14 @@ pub(super) enum Disturbance {
     Leakage(f64),
     /// Zener voltage times a factor.
     Breakdown(f64),
+    /// A resistance (Ω) in series with the emitter.
+    Ballast(f64),
+}
+
+/// An operating point in thermal equilibrium and the loop gain of its heat.
+pub(super) struct Heat {
+    pub point: OperatingPoint,
+    pub gain: f64,
 }
 
 /// What an axis of the declared space moves.
@@ -233,6 +241,42 @@ impl<'a> InCondition<'a> {
         let mut outputs = vec![Err(Miss::NotConverged); self.space.outputs.len()];
         self.evaluate(at, disturbed, None, &mut outputs);
         outputs
+    }
+
+    /// The operating point with the loop gain of its heat, and all equilibria where a single device heats itself.
+    pub fn heat(&self, at: &[f64], disturbed: &[(usize, Disturbance)]) -> Result<Heat, Failure> {
+        let mut work = self.work();
+        let ambient = self.prepare(&mut work, at, disturbed);
+        let Work { branches, scratch, point, .. } = &mut *work;
+        let plan = &self.space.plan;
+        plan.solve_into(branches, ambient, self.thermal, self.start.as_ref(), scratch, point)?;
+        let gain = plan.loop_gain(branches, ambient, &point.solution, scratch)?;
+        Ok(Heat { point: point.clone(), gain })
+    }
+
+    /// All thermal equilibria at a point, where a single device heats itself.
+    pub fn equilibria(&self, at: &[f64]) -> Option<Vec<solve::Equilibrium>> {
+        let mut work = self.work();
+        let ambient = self.prepare(&mut work, at, &[]);
+        let Work { branches, scratch, .. } = &mut *work;
+        let start = self.start.as_ref()?;
+        self.space.plan.equilibria(branches, ambient, start, scratch).ok()?
+    }
+
+    /// The thermal resistance (K/W) of an element as this condition has it.
+    pub fn r_th(&self, at: &[f64], element: usize) -> Option<f64> {
+        match self.branches(at)[element] {
+            Branch::Transistor { r_th, .. } | Branch::Diode { r_th, .. } => r_th,
+            _ => None,
+        }
+    }
+
+    /// A point at another ambient temperature (K), inside its range or not; `None` where no axis is the ambient.
+    pub fn at_ambient(&self, at: &[f64], ambient: f64) -> Option<Vec<f64>> {
+        let axis = self.moves.iter().position(|moves| *moves == Moves::Input(self.space.ambient))?;
+        let mut moved = at.to_vec();
+        moved[axis] = ambient;
+        Some(moved)
     }
 
     /// Values of all inputs, readings and derived results at a point; not-a-number where there is none.
@@ -602,6 +646,9 @@ fn disturb(branch: &mut Branch, disturbance: Disturbance) {
         (Branch::Transistor { parameters, .. }, Disturbance::Gain(factor)) => {
             parameters.gain_forward *= factor;
             parameters.emitter_leakage /= factor;
+        }
+        (Branch::Transistor { parameters, .. }, Disturbance::Ballast(ohms)) => {
+            parameters.emitter_resistance += ohms
         }
         (Branch::Transistor { probe, .. }, Disturbance::Junction(volts)) => probe.v_be += volts,
         (Branch::Transistor { probe, .. }, Disturbance::Collector(volts)) => probe.v_ce += volts,

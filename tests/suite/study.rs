@@ -1,5 +1,6 @@
 //! Studies of small notes: what is refused and where, and what each verdict rests on.
 
+mod heat;
 mod odds;
 
 use qsheaf::source::{Bundle, File};

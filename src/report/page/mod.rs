@@ -2,6 +2,7 @@
 //! compute nothing.
 
 mod body;
+mod heat;
 mod spreads;
 mod summary;
 mod tables;
@@ -83,6 +84,7 @@ pub(crate) fn page(
         "tolerance": tables::tolerance(findings),
         "spreads": spreads::spreads(findings),
         "stress": tables::stress(findings),
+        "heat": heat::heat(findings),
         "fits": tables::fits(findings),
         "trace": tables::trace(findings),
         "validity": findings.validity.iter().map(|text| rich(text)).collect::<Vec<_>>(),

@@ -161,6 +161,7 @@ pub fn study(program: &str, bundle: &Bundle, path: &str) -> Result<Findings, Dia
         derivation: vec![],
         spreads: vec![],
         stress: vec![],
+        heat: vec![],
         cautions: vec![],
         figures: vec![],
         trace: vec![],

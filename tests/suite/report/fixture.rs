@@ -963,6 +963,17 @@ pub fn findings() -> Findings {
         criteria: criteria(),
         spreads: vec![spread()],
         stress: stress(),
+        heat: vec![HeatFinding {
+            designator: "Q1".into(),
+            condition: "on".into(),
+            ambient: 323.15,
+            r_th: 180.0,
+            equilibrium: Some(EquilibriumFinding { power: 0.12, t_j: 344.75, gain: 0.62 }),
+            runaway_from: Some(391.2),
+            looked_at: [173.15, 473.15],
+            upper: Some(402.0),
+            ballast: Some(3.3),
+        }],
         cautions: vec![
             Caution { hazard: "burn".into(), title: "Hot surface".into(), why: "DS1 dissipates up to 1.8 W; its glass passes 60 °C at T_a = 50 °C.".into(), measure: "Guard the lamp, let it cool before service.".into(), basis: "EN ISO 13732-1, bare metal, contact of 1 s".into() },
             Caution { hazard: "gain-dependence".into(), title: "Darkness depends on the transistor".into(), why: "The criterion “dark” is a safety function and leans on I_CBO of Q1.".into(), measure: "Add a second, independent means of switching off, or monitor the lamp current.".into(), basis: "common practice".into() },

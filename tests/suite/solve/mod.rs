@@ -7,5 +7,6 @@ mod net;
 mod random;
 mod reference;
 mod regions;
+mod runaway;
 mod thermal;
 mod timing;
