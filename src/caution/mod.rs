@@ -93,12 +93,28 @@ pub struct SafetyFact {
     pub gains: Vec<String>,
 }
 
+/// How near the heat of a transistor comes to run-away, at its hottest corner.
+#[derive(Clone, PartialEq, Debug)]
+pub struct HeatFact {
+    pub designator: String,
+    pub condition: String,
+    /// Ambient temperature there (K).
+    pub ambient: f64,
+    /// Loop gain of the heat; none where the temperature runs away.
+    pub gain: Option<f64>,
+    /// Ambient temperature (K) from which it runs away, where that is known.
+    pub runaway_from: Option<f64>,
+    /// Resistance (Ω) in series with the emitter that would bring the loop gain to a half.
+    pub ballast: Option<f64>,
+}
+
 /// What cautions are chosen by.
 #[derive(Clone, PartialEq, Debug, Default)]
 pub struct Facts {
     pub elements: Vec<ElementFact>,
     pub highest: Option<Between>,
     pub safety: Vec<SafetyFact>,
+    pub heat: Vec<HeatFact>,
     /// Rows of data sheets that are needed and missing, each in words.
     pub wanted: Vec<String>,
 }

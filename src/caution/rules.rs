@@ -4,7 +4,7 @@ use crate::circuit::ElementKind;
 use crate::quantity::{Dimension, Kind, preferred_unit, text};
 
 use super::clamp::{self, Unclamped};
-use super::{Caution, ElementFact, Facts, Worst};
+use super::{Caution, ElementFact, Facts, HeatFact, Worst};
 
 /// Uncoated metal burns at a touch of one second from 65 °C on (ISO 13732-1, from memory).
 const TOUCH: f64 = 338.15;
@@ -17,6 +17,10 @@ const HAZARDOUS_ENERGY: f64 = 20.0;
 const HAZARDOUS_ENERGY_VOLTAGE: f64 = 2.0;
 /// Charge that is hazardous to touch above the touch voltage (IEC 61010-1, from memory).
 const HAZARDOUS_CHARGE: f64 = 45e-6;
+/// Loop gain of a transistor's heat above which less than a factor of two is left, and the ambient temperature (K) above the
+/// highest one at which run-away should begin at the earliest (common practice).
+const HEAT_GAIN: f64 = 0.5;
+const HEAT_ROOM: f64 = 20.0;
 /// Reverse voltage that base-emitter junctions stand where the sheet is silent: breakdown starts at 5 V to 6 V.
 const USUAL_V_EBO: f64 = 5.0;
 
@@ -31,6 +35,7 @@ pub fn cautions(facts: &Facts) -> Vec<Caution> {
     out.extend(burn(facts));
     let highest = facts.highest.as_ref().map(|between| between.voltage.value);
     out.extend(clamp::unclamped(&facts.elements, highest).iter().map(inductive_kick));
+    out.extend(runaway(facts));
     out.extend(base_emitter_reverse(facts));
     out.extend(gain_dependence(facts));
     out.extend(missing_data(facts));
@@ -186,6 +191,46 @@ fn inductive_kick(found: &Unclamped<'_>) -> Caution {
          release), or a Zener across the transistor below its V_CEO.",
         "common practice",
     )
+}
+
+fn runaway(facts: &Facts) -> Option<Caution> {
+    let is_near = |heat: &&HeatFact| {
+        let short = heat.runaway_from.is_some_and(|from| from < heat.ambient + HEAT_ROOM);
+        heat.gain.is_none_or(|gain| gain > HEAT_GAIN) || short
+    };
+    let told: Vec<String> = facts.heat.iter().filter(is_near).map(runaway_words).collect();
+    (!told.is_empty()).then(|| {
+        caution(
+            "run-away",
+            "Thermal run-away",
+            told.join("; "),
+            "Put a resistor in series with the emitter, let the bias follow the transistor's temperature, lower the collector \
+             voltage or the thermal resistance.",
+            "common practice: a loop gain of the heat of at most one half, and 20 K between the highest ambient temperature \
+             and run-away",
+        )
+    })
+}
+
+fn runaway_words(heat: &HeatFact) -> String {
+    let HeatFact { designator, condition, ambient, .. } = heat;
+    let ambient = shown(*ambient, Kind::TEMPERATURE);
+    let mut words = match heat.gain {
+        Some(gain) => {
+            format!("the heat of {designator} has a loop gain of {gain:.2} at {ambient} ({condition})")
+        }
+        None => format!("{designator} runs away at {ambient} ({condition})"),
+    };
+    if let Some(from) = heat.runaway_from {
+        words += &format!(", it runs away from an ambient of {}", shown(from, Kind::TEMPERATURE));
+    }
+    if let Some(ohms) = heat.ballast {
+        words += &format!(
+            "; {} in its emitter would bring the gain to 0.5",
+            shown(ohms, Kind::of(Dimension::OHM))
+        );
+    }
+    words
 }
 
 fn base_emitter_reverse(facts: &Facts) -> Option<Caution> {

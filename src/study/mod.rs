@@ -48,7 +48,8 @@ pub fn study(bundle: &Bundle, path: &str) -> Result<Findings, Diagnostics> {
     let (criteria, spreads) = judge::criteria(&judge);
     let results = judge::results(&judge);
     let stress = stressed::lines(&judge);
-    let cautions = stressed::cautions(&judge, &criteria, &stress);
+    let heat = heat::lines(&judge);
+    let cautions = stressed::cautions(&judge, &criteria, &stress, &heat);
     let first = conditions.first().map_or("", |condition| condition.name);
     let body = prose::body(&compiled, &criteria, &results, first, &mut diagnostics);
     let derivation = points::steps(&compiled, &cases, &conditions, &mut diagnostics);
@@ -84,7 +85,7 @@ pub fn study(bundle: &Bundle, path: &str) -> Result<Findings, Diagnostics> {
         results,
         derivation,
         criteria,
-        heat: heat::lines(&judge),
+        heat,
         stress,
         cautions,
         figures,

@@ -2,10 +2,10 @@
 
 use super::cases::Stated;
 use super::compile::StressOutputs;
-use super::findings::{CriterionFinding, Verdict};
+use super::findings::{CriterionFinding, HeatFinding, Verdict};
 use super::judge::Judge;
 use super::response::Moves;
-use crate::caution::{self, Between, Caution, ElementFact, Facts, SafetyFact, Worst};
+use crate::caution::{self, Between, Caution, ElementFact, Facts, HeatFact, SafetyFact, Worst};
 use crate::circuit::ElementKind;
 use crate::part::RatingQuantity;
 use crate::quantity::Shown;
@@ -84,8 +84,17 @@ pub(super) fn cautions(
     judge: &Judge<'_>,
     criteria: &[CriterionFinding],
     stress: &[StressLine],
+    heat: &[HeatFinding],
 ) -> Vec<Caution> {
-    caution::cautions(&facts(judge, criteria, stress))
+    let heat = heat.iter().map(|found| HeatFact {
+        designator: found.designator.clone(),
+        condition: found.condition.clone(),
+        ambient: found.ambient,
+        gain: found.equilibrium.map(|equilibrium| equilibrium.gain),
+        runaway_from: found.runaway_from,
+        ballast: found.ballast,
+    });
+    caution::cautions(&Facts { heat: heat.collect(), ..facts(judge, criteria, stress) })
 }
 
 fn facts(judge: &Judge<'_>, criteria: &[CriterionFinding], stress: &[StressLine]) -> Facts {

@@ -1,6 +1,6 @@
 //! Cautions: for each rule a circuit that triggers it and a near miss that must not.
 
-use qsheaf::caution::{self, Between, Caution, ElementFact, Facts, SafetyFact, Worst};
+use qsheaf::caution::{self, Between, Caution, ElementFact, Facts, HeatFact, SafetyFact, Worst};
 use qsheaf::circuit::ElementKind;
 
 fn worst(value: f64) -> Option<Worst> {
@@ -296,4 +296,35 @@ fn a_bridge_needs_the_diodes_of_both_sides() {
     assert!(kicks(&[&bridge[..], &one_side].concat()));
     let both = [diode(2, 1), diode(0, 2), diode(4, 1), diode(0, 4)];
     assert!(!kicks(&[&bridge[..], &both].concat()));
+}
+
+fn heat(gain: Option<f64>, runaway_from: Option<f64>) -> Vec<Caution> {
+    let fact = HeatFact {
+        designator: "Q1".to_owned(),
+        condition: "lamp on".to_owned(),
+        ambient: 323.15,
+        gain,
+        runaway_from,
+        ballast: Some(3.3),
+    };
+    caution::cautions(&Facts { heat: vec![fact], ..Facts::default() })
+}
+
+#[test]
+fn heat_that_feeds_on_itself_is_told() {
+    let found = only(&heat(Some(0.62), Some(351.15)), "run-away");
+    assert!(
+        found.why.contains("the heat of Q1 has a loop gain of 0.62 at 50.0\u{a0}°C (lamp on)"),
+        "{}",
+        found.why
+    );
+    assert!(found.why.contains("from an ambient of 78.0\u{a0}°C"), "{}", found.why);
+    assert!(found.why.contains("3.30\u{a0}Ω in its emitter"), "{}", found.why);
+    assert!(found.basis.contains("common practice"));
+    let found = only(&heat(None, Some(300.0)), "run-away");
+    assert!(found.why.contains("Q1 runs away at 50.0\u{a0}°C"), "{}", found.why);
+    // A low gain does not help where run-away begins 19 K above the highest ambient.
+    only(&heat(Some(0.2), Some(323.15 + 19.0)), "run-away");
+    assert!(heat(Some(0.49), None).is_empty());
+    assert!(heat(Some(0.49), Some(323.15 + 21.0)).is_empty());
 }
